@@ -1,0 +1,1 @@
+//! Writers and readers of mesh files, on streams; they open no file themselves.

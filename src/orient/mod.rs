@@ -1,0 +1,1 @@
+//! Build directions and placement on the plate.

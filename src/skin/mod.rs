@@ -1,0 +1,5 @@
+//! Skins: families of eversions and their sampling.
+
+mod family;
+
+pub use family::{Family, Margins, StageSurface};

@@ -1,0 +1,1 @@
+//! From a field to a closed two-manifold mesh, simplified and audited.
