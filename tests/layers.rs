@@ -72,7 +72,7 @@ fn strip(source: &str) -> String {
     let at = |i: usize| c.get(i).copied().unwrap_or('\0');
     let mut out = String::with_capacity(source.len());
     let mut i = 0;
-    let mut keep_lines = |out: &mut String, from: usize, to: usize| {
+    let keep_lines = |out: &mut String, from: usize, to: usize| {
         out.push(' ');
         out.extend(c[from.min(c.len())..to.min(c.len())].iter().filter(|x| **x == '\n'));
     };
