@@ -1,5 +1,8 @@
 //! The set as data, in words and in pictures. Measures nothing.
 
+mod flat_arrays;
+mod json;
 mod record;
 
-pub use record::{RegularityRecord, SetRecord, SkinRecord, SolidRecord, StageRecord};
+pub use json::{SCHEMA, SCHEMA_VERSION, set_json};
+pub use record::{RegularityRecord, SetRecord, SkinRecord, SolidRecord, StageRecord, TotalsRecord};

@@ -97,3 +97,37 @@ pub struct SetRecord {
     /// Stages that could not be made: index, tau, why.
     pub failures: Vec<(usize, f64, String)>,
 }
+
+/// Sums over the stages that were made.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct TotalsRecord {
+    /// Volume of material, mm3.
+    pub volume_mm3: f64,
+    /// Mass of the material, g.
+    pub mass_g: f64,
+    /// Triangles.
+    pub triangles: usize,
+}
+
+impl SetRecord {
+    /// The worst verdict of all stages; a stage that could not be made counts as a fail.
+    #[must_use]
+    pub fn verdict(&self) -> Verdict {
+        if !self.failures.is_empty() {
+            return Verdict::Fail;
+        }
+        self.stages.iter().map(StageRecord::verdict).max().unwrap_or(Verdict::Pass)
+    }
+
+    /// Sums over the stages that were made, in their order.
+    #[must_use]
+    pub fn totals(&self) -> TotalsRecord {
+        let mut sum = TotalsRecord { volume_mm3: 0.0, mass_g: 0.0, triangles: 0 };
+        for stage in &self.stages {
+            sum.volume_mm3 += stage.solid.volume_mm3;
+            sum.mass_g += stage.solid.mass_g;
+            sum.triangles += stage.solid.triangles;
+        }
+        sum
+    }
+}

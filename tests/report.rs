@@ -1,0 +1,7 @@
+//! The set as data, in words and in pictures, seen from outside the library.
+#![allow(clippy::unwrap_used, reason = "test code")]
+
+mod report {
+    mod json;
+    pub(crate) mod sample;
+}
