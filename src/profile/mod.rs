@@ -1,4 +1,16 @@
 //! Printing profiles: a process, a material, a machine, and the limits the checks use, each with its source.
+//!
+//! Six profiles are embedded ([`built_in_names`]); a file with the same keys overrides or adds one
+//! ([`Profile::parse`]). All their numbers are screening values: defaults of this tool taken from
+//! published guides, never the requirement of a standard.
+
+mod built_in;
+mod describe;
+mod parse;
+
+pub use built_in::built_in_names;
+pub use describe::describe;
+pub use parse::{Problem, ProfileErrors};
 
 use serde::{Deserialize, Serialize};
 
@@ -24,6 +36,22 @@ pub enum Trapped {
     Resin,
     /// Support material filling the chamber.
     Support,
+}
+
+impl Trapped {
+    /// All kinds in their fixed order.
+    pub const ALL: [Self; 4] = [Self::Air, Self::Powder, Self::Resin, Self::Support];
+
+    /// The word used in profile files: `air`, `powder`, `resin`, `support`.
+    #[must_use]
+    pub const fn name(self) -> &'static str {
+        match self {
+            Self::Air => "air",
+            Self::Powder => "powder",
+            Self::Resin => "resin",
+            Self::Support => "support",
+        }
+    }
 }
 
 /// A printing process with the limits the checks use. Lengths in mm, angles in degrees.
