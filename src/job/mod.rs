@@ -1,5 +1,17 @@
 //! The job as data: what is asked for.
 
+mod keys;
+mod parse;
+mod problem;
+mod write;
+
+pub use keys::{Default, FILE_BYTES_MAX, KEYS, Key, Kind, TIMES_MAX, TITLE_CHARS, reference};
+pub use parse::{Known, is_profile_path, parse};
+pub use problem::{Cause, JobErrors, Problem};
+
+#[cfg(test)]
+mod tests;
+
 use crate::geom::Vec3;
 
 /// A file format for the solids.
@@ -37,6 +49,20 @@ pub enum Scale {
     Common,
 }
 
+impl Scale {
+    /// Both, in their fixed order.
+    pub const ALL: [Self; 2] = [Self::Each, Self::Common];
+
+    /// The name in job files: `each`, `common`.
+    #[must_use]
+    pub const fn name(self) -> &'static str {
+        match self {
+            Self::Each => "each",
+            Self::Common => "common",
+        }
+    }
+}
+
 /// One set to make, validated: every number is finite and in its documented range.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Job {
@@ -68,4 +94,26 @@ pub struct Job {
     pub colour_a: [u8; 3],
     /// sRGB colour of side B.
     pub colour_b: [u8; 3],
+}
+
+/// The built-in starter set, made when no job file is given: five stages of the ruled family, 80 mm, from
+/// the round sphere to the halfway model.
+#[must_use]
+pub fn starter() -> Job {
+    Job {
+        title: "From sphere to halfway model in five stages".to_owned(),
+        profile: "mex-pla".to_owned(),
+        formats: vec![Format::Stl, Format::ThreeMf],
+        family: "ruled".to_owned(),
+        order: 2,
+        times: vec![0.0, 0.2, 0.31, 0.42, 0.5],
+        size_mm: 80.0,
+        scale: Scale::Each,
+        wall_mm: 2.0,
+        tolerance_mm: 0.05,
+        grid_mm: None,
+        direction: Vec3::z(),
+        colour_a: [0x1f, 0x7a, 0x7a],
+        colour_b: [0xe3, 0xc0, 0x8f],
+    }
 }
