@@ -4,6 +4,7 @@ mod aabb;
 mod curvature;
 mod jet;
 mod quadrature;
+mod search;
 mod surface;
 mod triangle;
 
@@ -11,6 +12,7 @@ pub use aabb::Aabb;
 pub use curvature::Curvature;
 pub use jet::{Dual2, Jet2, Scalar};
 pub use quadrature::gauss_legendre;
+pub use search::golden_section_minimum;
 pub use surface::{FirstJet, Placed, Placement, SecondJet, Surface, tangent_frame};
 pub use triangle::{ClosestPoint, closest_point_on_triangle};
 

@@ -18,6 +18,11 @@ pub trait StageSurface: Surface {
     fn tau(&self) -> f64;
     /// The family's own regularity condition at this time (see [`Margins::fold`]).
     fn fold_margin(&self) -> Option<f64>;
+    /// A number k such that rotation by 2 pi / k about z maps the stage to itself, sides kept, by rotation
+    /// of the unit sphere by the same angle; 1 when none is known.
+    fn symmetry(&self) -> u32 {
+        1
+    }
 }
 
 /// A way to evert the sphere.
