@@ -163,6 +163,29 @@ impl Tree {
         all
     }
 
+    /// Calls `visit` with every triangle in a leaf whose box the ray `origin + t * dir`, `t >= 0`, meets: all that the
+    /// ray can meet and some more, for callers that decide each exactly.
+    pub fn along(&self, origin: &Vec3, dir: &Vec3, mut visit: impl FnMut(u32)) {
+        if self.nodes.is_empty() {
+            return;
+        }
+        let ray = Ray::new(origin, dir);
+        let mut stack = vec![0_u32];
+        while let Some(at) = stack.pop() {
+            let node = &self.nodes[at as usize];
+            if ray.enter(node, 0.0, f64::INFINITY).is_none() {
+                continue;
+            }
+            if node.count > 0 {
+                self.ids[node.link as usize..(node.link + node.count) as usize]
+                    .iter()
+                    .for_each(|&t| visit(t));
+            } else {
+                stack.extend([at + node.link, at + 1]);
+            }
+        }
+    }
+
     /// Calls `visit` with every pair of different triangles whose boxes meet (touching counts), each pair once
     /// with the smaller number first, and returns what was pushed, in an order that does not depend on the threads.
     #[must_use]
@@ -346,10 +369,10 @@ impl Ray {
                 continue;
             }
             let (a, b) = ((lo - self.origin[k]) * self.inverse[k], (hi - self.origin[k]) * self.inverse[k]);
-            // A few units in the last place outward cover the rounding of both operations.
+            // 45 units in the last place outward cover the rounding of both operations, and of `dir` itself.
             let (a, b) = (a.min(b), a.max(b));
-            near = near.max(a - 1e-15 * a.abs());
-            far = far.min(b + 1e-15 * b.abs());
+            near = near.max(a - 1e-14 * a.abs());
+            far = far.min(b + 1e-14 * b.abs());
         }
         (near <= far).then_some(near)
     }

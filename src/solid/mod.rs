@@ -1,1 +1,9 @@
 //! From a field to a closed two-manifold mesh, simplified and audited.
+
+mod audit;
+mod finish;
+mod shells;
+
+pub use audit::{Audit, Fault, FaultKind, KEPT_PER_KIND, audit};
+pub use finish::finish;
+pub use shells::Shell;
