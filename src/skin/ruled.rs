@@ -94,7 +94,7 @@ impl RuledStage {
         let p = &self.par;
         let r2 = x * x + y * y;
         let rho_n = half_power::<T, N>(r2);
-        let rho_2n = if N % 2 == 0 { rho_n.square() } else { whole_power::<T, N>(r2) };
+        let rho_2n = if N.is_multiple_of(2) { rho_n.square() } else { whole_power::<T, N>(r2) };
         let (mut cn, mut sn) = (x, y);
         for _ in 1..N {
             (cn, sn) = (cn * x - sn * y, cn * y + sn * x);
