@@ -12,6 +12,7 @@
 mod colours;
 mod obj;
 mod printed;
+mod read;
 mod stl;
 mod three_mf;
 mod xml;
@@ -19,5 +20,8 @@ mod xml;
 pub use colours::SideColours;
 pub use obj::{ObjInfo, write_mtl, write_obj};
 pub use printed::{COORDINATE_MAX_MM, WriteError};
+pub use read::{
+    COUNT_MAX, Imported, MeshFormat, Place, ReadError, ReadNote, UNPACKED_MAX, detect_format, read_mesh,
+};
 pub use stl::write_stl;
 pub use three_mf::{ThreeMf, ThreeMfObject, write_3mf};

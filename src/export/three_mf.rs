@@ -7,7 +7,8 @@ use super::colours::SideColours;
 use super::printed::{Rounding, WriteError, printed_positions};
 use super::xml::Escaped;
 use crate::mesh::{Side, TriMesh};
-use std::io::{self, BufWriter, Seek, Write};
+use std::cell::RefCell;
+use std::io::{self, BufWriter, Seek, SeekFrom, Write};
 use zip::write::SimpleFileOptions;
 use zip::{CompressionMethod, DateTime, System, ZipWriter};
 
@@ -82,7 +83,52 @@ pub fn write_3mf<W: Write + Seek>(model: &ThreeMf<'_>, w: W) -> Result<(), Write
     if printed.is_empty() {
         return Err(WriteError::NoObject);
     }
-    write_package(model, &names, &printed, w).map_err(|source| WriteError::Stream { format: "3MF", source })
+    let failure = RefCell::new(None);
+    let result = write_package(model, &names, &printed, Guarded { inner: w, failure: &failure });
+    match (failure.into_inner(), result) {
+        (Some(source), _) | (None, Err(source)) => Err(WriteError::Stream { format: "3MF", source }),
+        (None, Ok(())) => Ok(()),
+    }
+}
+
+/// Keeps the first failure of a stream and lets everything after it pass into nothing: a container that is
+/// dropped half-written tries to finish itself and would print to the terminal if that failed again.
+struct Guarded<'f, W> {
+    inner: W,
+    failure: &'f RefCell<Option<io::Error>>,
+}
+
+impl<W> Guarded<'_, W> {
+    fn attempt<T>(&mut self, lost: T, act: impl FnOnce(&mut W) -> io::Result<T>) -> io::Result<T> {
+        let mut failure = self.failure.borrow_mut();
+        if failure.is_some() {
+            return Ok(lost);
+        }
+        act(&mut self.inner).map_err(|e| {
+            if e.kind() == io::ErrorKind::Interrupted {
+                return e;
+            }
+            let copy = io::Error::new(e.kind(), "the stream failed");
+            *failure = Some(e);
+            copy
+        })
+    }
+}
+
+impl<W: Write> Write for Guarded<'_, W> {
+    fn write(&mut self, bytes: &[u8]) -> io::Result<usize> {
+        self.attempt(bytes.len(), |w| w.write(bytes))
+    }
+
+    fn flush(&mut self) -> io::Result<()> {
+        self.attempt((), Write::flush)
+    }
+}
+
+impl<W: Seek> Seek for Guarded<'_, W> {
+    fn seek(&mut self, to: SeekFrom) -> io::Result<u64> {
+        self.attempt(0, |w| w.seek(to))
+    }
 }
 
 /// The metadata names as written, prefixed where needed.
