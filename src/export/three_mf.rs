@@ -84,7 +84,8 @@ pub fn write_3mf<W: Write + Seek>(model: &ThreeMf<'_>, w: W) -> Result<(), Write
         return Err(WriteError::NoObject);
     }
     let failure = RefCell::new(None);
-    let result = write_package(model, &names, &printed, Guarded { inner: w, failure: &failure });
+    let result =
+        write_package(model, &names, &printed, Guarded { inner: w, failure: &failure, at: 0, end: 0 });
     match (failure.into_inner(), result) {
         (Some(source), _) | (None, Err(source)) => Err(WriteError::Stream { format: "3MF", source }),
         (None, Ok(())) => Ok(()),
@@ -92,13 +93,17 @@ pub fn write_3mf<W: Write + Seek>(model: &ThreeMf<'_>, w: W) -> Result<(), Write
 }
 
 /// Keeps the first failure of a stream and lets everything after it pass into nothing: a container that is
-/// dropped half-written tries to finish itself and would print to the terminal if that failed again.
+/// dropped half-written tries to finish itself, and would print to the terminal if that failed again.
 struct Guarded<'f, W> {
     inner: W,
     failure: &'f RefCell<Option<io::Error>>,
+    /// Where the stream stands and ends, or would if it had not failed.
+    at: u64,
+    end: u64,
 }
 
 impl<W> Guarded<'_, W> {
+    /// Does `act` unless the stream has failed; then gives `lost`.
     fn attempt<T>(&mut self, lost: T, act: impl FnOnce(&mut W) -> io::Result<T>) -> io::Result<T> {
         let mut failure = self.failure.borrow_mut();
         if failure.is_some() {
@@ -117,7 +122,10 @@ impl<W> Guarded<'_, W> {
 
 impl<W: Write> Write for Guarded<'_, W> {
     fn write(&mut self, bytes: &[u8]) -> io::Result<usize> {
-        self.attempt(bytes.len(), |w| w.write(bytes))
+        let n = self.attempt(bytes.len(), |w| w.write(bytes))?;
+        self.at += n as u64;
+        self.end = self.end.max(self.at);
+        Ok(n)
     }
 
     fn flush(&mut self) -> io::Result<()> {
@@ -127,7 +135,13 @@ impl<W: Write> Write for Guarded<'_, W> {
 
 impl<W: Seek> Seek for Guarded<'_, W> {
     fn seek(&mut self, to: SeekFrom) -> io::Result<u64> {
-        self.attempt(0, |w| w.seek(to))
+        let lost = match to {
+            SeekFrom::Start(at) => at,
+            SeekFrom::Current(by) => self.at.saturating_add_signed(by),
+            SeekFrom::End(by) => self.end.saturating_add_signed(by),
+        };
+        self.at = self.attempt(lost, |w| w.seek(to))?;
+        Ok(self.at)
     }
 }
 

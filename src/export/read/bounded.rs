@@ -76,3 +76,35 @@ impl<R: BufRead> BufRead for Bounded<R> {
 pub(super) fn stop_of(error: &io::Error) -> Option<Stop> {
     error.get_ref()?.downcast_ref::<Stop>().copied()
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn stop(total: u64, size: usize, mark_every: usize) -> Option<Stop> {
+        let bytes = vec![b'x'; size];
+        let mut reader = Bounded::new(io::BufReader::with_capacity(4096, bytes.as_slice()), total);
+        let mut read = 0;
+        loop {
+            if read % mark_every == 0 {
+                reader.mark();
+            }
+            match reader.fill_buf().map(|b| b.len().min(mark_every)) {
+                Ok(0) => return None,
+                Ok(n) => {
+                    reader.consume(n);
+                    read += n;
+                }
+                Err(e) => return stop_of(&e),
+            }
+        }
+    }
+
+    #[test]
+    fn both_limits_stop_the_stream_and_nothing_else_does() {
+        assert_eq!(stop(10_000, 10_000, 4096), None); // exactly as much as allowed
+        assert_eq!(stop(9_999, 10_000, 4096), Some(Stop::Total));
+        assert_eq!(stop(1 << 30, 5 << 20, 4096), None);
+        assert_eq!(stop(1 << 30, 5 << 20, usize::MAX), Some(Stop::Piece));
+    }
+}
