@@ -18,5 +18,6 @@ pub use folder::FolderError;
 pub use machine::machine_memory_bytes;
 pub use names::{COLOURS_FILE, stage_stem};
 pub use run::{
-    BatchError, Maker, Outcome, Pipeline, Request, StageOutcome, StageResult, THREADS_MAX, Watch, Worst, run,
+    BatchError, Maker, Outcome, Pipeline, Request, StageOutcome, StageResult, THREADS_MAX, Watch, Worst,
+    memory_fits, run,
 };

@@ -245,7 +245,8 @@ pub fn run(request: &Request<'_>, maker: &dyn Maker, watch: &dyn Watch) -> Resul
     }
     let pool = threads(request.threads)?;
     let plan = maker.plan(job, request.profile)?;
-    check_memory(request, &plan)?;
+    let machine_bytes = request.memory_bytes.unwrap_or_else(machine_memory_bytes);
+    memory_fits(job, &plan, request.stages.as_deref(), machine_bytes)?;
     let names = names::all(job);
     let folder = Folder::open(request.out, &names)?;
     let mut batch = Batch { request, maker, watch, folder, pictures: Vec::new(), full: false };
@@ -264,9 +265,17 @@ fn threads(threads: Option<usize>) -> Result<Option<rayon::ThreadPool>, BatchErr
     Ok(Some(pool.map_err(|source| BatchError::NoThreads { threads, source })?))
 }
 
-fn check_memory(request: &Request<'_>, plan: &Plan) -> Result<(), BatchError> {
-    let machine_bytes = request.memory_bytes.unwrap_or_else(machine_memory_bytes);
-    let chosen = |index: usize| request.stages.as_ref().is_none_or(|s| s.contains(&index));
+/// Whether the stages of a plan (all, or those chosen) fit into the memory of a machine, a tenth to spare.
+///
+/// # Errors
+/// [`BatchError::Memory`] naming the stage that needs most and the key to change.
+pub fn memory_fits(
+    job: &Job,
+    plan: &Plan,
+    stages: Option<&[usize]>,
+    machine_bytes: u64,
+) -> Result<(), BatchError> {
+    let chosen = |index: usize| stages.is_none_or(|s| s.contains(&index));
     let Some(stage) = plan.stages.iter().filter(|s| chosen(s.index)).max_by_key(|s| s.memory_bytes) else {
         return Ok(());
     };
@@ -281,7 +290,7 @@ fn check_memory(request: &Request<'_>, plan: &Plan) -> Result<(), BatchError> {
         grid_mm: plan.grid_mm,
         needed_bytes: stage.memory_bytes,
         machine_bytes,
-        advice: memory_advice(request.job, plan.grid_mm * (needed / limit).sqrt()),
+        advice: memory_advice(job, plan.grid_mm * (needed / limit).sqrt()),
     })
 }
 
