@@ -3,5 +3,6 @@
 
 mod report {
     mod json;
+    mod pictures;
     pub(crate) mod sample;
 }

@@ -2,6 +2,7 @@
 
 mod flat_arrays;
 mod json;
+pub mod picture;
 mod record;
 
 pub use json::{SCHEMA, SCHEMA_VERSION, set_json};
