@@ -2,8 +2,8 @@
 
 /// The place and value of the least value of `f` in [low, high], for an `f` that falls, then rises there.
 ///
-/// Stops when the bracket is narrower than 1e-9 of its first width: for a smooth minimum the value is then
-/// right to rounding. For an `f` with several minima, one of them.
+/// Stops when the bracket is narrower than 1e-15 of its first width: the value is then right to rounding, at
+/// a smooth minimum and at a kink. For an `f` with several minima, one of them.
 ///
 /// # Source
 /// J. Kiefer, "Sequential minimax search for a maximum", Proc. AMS 4, 1953.
@@ -14,7 +14,7 @@ pub fn golden_section_minimum(f: impl Fn(f64) -> f64, low: f64, high: f64) -> (f
     let (mut x1, mut x2) = (b - ratio * (b - a), a + ratio * (b - a));
     let (mut f1, mut f2) = (f(x1), f(x2));
     for _ in 0..100 {
-        if b - a <= 1e-9 * width {
+        if b - a <= 1e-15 * width {
             break;
         }
         if f1 <= f2 {
@@ -41,6 +41,8 @@ mod tests {
         let (x, f) = golden_section_minimum(|x| (x - 0.3) * (x - 0.3) + 2.0, -1.0, 4.0);
         assert!((x - 0.3).abs() < 1e-7 && (f - 2.0).abs() < 1e-14);
         let (x, _) = golden_section_minimum(|x| x, 1.0, 2.0);
-        assert!((x - 1.0).abs() < 1e-8);
+        assert!((x - 1.0).abs() < 1e-14);
+        let (x, f) = golden_section_minimum(|x| (x - 0.7).abs(), 0.0, 1.0);
+        assert!((x - 0.7).abs() < 1e-14 && f < 1e-14);
     }
 }

@@ -11,10 +11,10 @@
 //! Changed: lengths in space, and the new vertex halves the edge's image instead of its parameters.
 
 use super::linked::{Linked, before, next};
+use super::sphere::quartered_octahedron;
 use crate::geom::{FirstJet, Surface, Vec3, closest_point_on_triangle, tangent_frame};
 use crate::mesh::SkinMesh;
 use rayon::prelude::*;
-use std::collections::BTreeMap;
 
 /// Times an octahedron's triangles are quartered at the start: 2048 triangles, 64 points around the
 /// equator, 12 for each wave of order 5.
@@ -265,6 +265,10 @@ impl<'s> Sampler<'s> {
             .rev()
             .filter(|t| self.deviation[*t].is_none())
             .flat_map(|t| [(t, 2), (t, 1), (t, 0)])
+            .filter(|&(t, i)| {
+                let u = self.mesh.neighbours[t][i] as usize;
+                t < u || self.deviation[u].is_some()
+            })
             .collect();
         while let Some((t, i)) = stack.pop() {
             if self.flip_improves(t, i) {
@@ -384,31 +388,6 @@ fn largest_cosine([a, b, c]: [&Vec3; 3]) -> f64 {
     };
     let cosine = (p * p + q * q - r * r) / (2.0 * p * q);
     if cosine.is_nan() { 1.0 } else { cosine }
-}
-
-/// An octahedron with corners on the axes, every triangle quartered `level` times on the unit sphere.
-fn quartered_octahedron(level: u32) -> (Vec<Vec3>, Vec<[u32; 3]>) {
-    let mut points = vec![Vec3::x(), Vec3::y(), -Vec3::x(), -Vec3::y(), Vec3::z(), -Vec3::z()];
-    let mut triangles: Vec<[u32; 3]> =
-        vec![[0, 1, 4], [1, 2, 4], [2, 3, 4], [3, 0, 4], [1, 0, 5], [2, 1, 5], [3, 2, 5], [0, 3, 5]];
-    for _ in 0..level {
-        let mut middles = BTreeMap::new();
-        let mut middle = |a: u32, b: u32| {
-            *middles.entry((a.min(b), a.max(b))).or_insert_with(|| {
-                let m = (points[a as usize] + points[b as usize]).normalize();
-                points.push(m);
-                u32::try_from(points.len() - 1).unwrap_or(u32::MAX)
-            })
-        };
-        triangles = triangles
-            .iter()
-            .flat_map(|&[a, b, c]| {
-                let (p, q, r) = (middle(a, b), middle(b, c), middle(c, a));
-                [[a, p, r], [p, b, q], [r, q, c], [p, q, r]]
-            })
-            .collect();
-    }
-    (points, triangles)
 }
 
 #[cfg(test)]
