@@ -1,7 +1,10 @@
 //! From a field to a closed two-manifold mesh, simplified and audited.
 
 mod audit;
+mod cube;
+mod fill;
 mod finish;
+mod lattice;
 mod shells;
 
 pub use audit::{Audit, Fault, FaultKind, KEPT_PER_KIND, audit};
