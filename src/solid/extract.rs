@@ -218,8 +218,8 @@ struct View<'v, 'f> {
     n: usize,
 }
 
-impl View<'_, '_> {
-    fn block(&self) -> &Block<'_> {
+impl<'v, 'f> View<'v, 'f> {
+    fn block(&self) -> &'v Block<'f> {
         &self.lattice.blocks[self.n]
     }
 

@@ -2,11 +2,14 @@
 
 mod audit;
 mod cube;
+mod extract;
 mod fill;
 mod finish;
 mod lattice;
 mod shells;
+mod solidify;
 
 pub use audit::{Audit, Fault, FaultKind, KEPT_PER_KIND, audit};
 pub use finish::finish;
 pub use shells::Shell;
+pub use solidify::{GridError, GridSettings, Meshed, block_estimate, solidify};
