@@ -47,4 +47,8 @@ pub trait LocalField<'f>: Send + Sync {
     /// The same for the smooth piece named by an earlier sample, whether or not it is the nearest at `p`:
     /// where two pieces meet in an edge, each can be followed past the edge.
     fn piece(&self, piece: u32, p: &Vec3) -> Sample;
+    /// The least value at `p` over the pieces of the boundary that face the one in direction `gradient`
+    /// across a gap: whose own gradient is more than 120 degrees away from it. Infinite when there is none
+    /// in the region. Accurate to the chord error of the field.
+    fn facing(&self, p: &Vec3, gradient: &Vec3) -> f64;
 }

@@ -284,6 +284,21 @@ impl<'f> LocalField<'f> for SheetNear<'f> {
         self.nearest_sheet(p)
     }
 
+    fn facing(&self, p: &Vec3, gradient: &Vec3) -> f64 {
+        let mut best = f64::INFINITY;
+        let c = single(p);
+        for (b, &t) in self.balls.iter().zip(&self.ids) {
+            if f64::from(gap(b, c) - b[3] - SLACK) >= best {
+                continue;
+            }
+            let (_, q, d) = self.field.flat(t, p);
+            if d < best && (p - q).dot(gradient) < -0.5 * d {
+                best = d;
+            }
+        }
+        best - self.field.half_wall
+    }
+
     fn piece(&self, piece: u32, p: &Vec3) -> Sample {
         let (w, _, _) = self.field.flat(piece, p);
         let (d, gradient, side) = self.field.polished(piece, w, p);

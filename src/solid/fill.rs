@@ -1,17 +1,19 @@
 //! Keeps grid noise out of the narrow wedges where two sheets of wall meet.
 //!
-//! Where the air between two walls is thinner than about two cells, single nodes of it stand out as
-//! bubbles and their chains as handles: topology of the grid, not of the solid. So the air is grown
-//! again, from where it is thick into where it is thin, and a thin node joins only when that changes
-//! nothing in the topology but, at most, joins two separate regions of air that really touch. Nodes left
-//! over become material. No bubble and no handle can appear in the thin parts; what is lost is air
-//! thinner than about a cell, and it is counted.
+//! A layer of air between two walls is seen by the nodes without holes when it is sqrt(3) cells thick, the
+//! thickness of a digital plane whose nodes are joined through faces. Where it is thinner, single nodes
+//! of it stand out as bubbles and their chains as handles: topology of the grid, not of the solid. So the
+//! air is grown again, from where it is thick into where it is thin, and a thin node joins only when that
+//! changes nothing in the topology but, at most, joins two separate regions of air that really touch.
+//! Nodes left over become material. No bubble and no handle can appear in the thin parts; what is lost is
+//! some air thinner than about a cell, and it is counted.
 //!
 //! # Source
 //! Simple points by counting components in the 26-neighbourhood: G. Bertrand, G. Malandain, "A new
 //! characterization of three-dimensional simple points", Pattern Recognition Letters 15, 1994, for air
 //! joined through faces and material joined through faces and edges, which is how [`super::cube`] reads
-//! a face. Growth in the order of the distance: homotopic region growing, e.g. J.-F. Mangin et al.,
+//! a face. Thickness of digital planes: É. Andres, R. Acharya, C. Sibata, "Discrete analytical hyperplanes",
+//! Graphical Models and Image Processing 59, 1997. Growth in the order of the distance: homotopic region growing, e.g. J.-F. Mangin et al.,
 //! J. Math. Imaging Vision 5, 1995.
 
 use super::lattice::{BLOCK, Block, Lattice, NODES, State, node_index, padded_index, signed_f32};
@@ -19,7 +21,7 @@ use rayon::prelude::*;
 use rustc_hash::FxHashMap;
 use std::collections::BinaryHeap;
 
-/// Air deeper than this many cells (half a cell's diagonal) is thick: a ball of air reaches every node around.
+/// Air deeper than this many cells is thick: half of sqrt(3).
 const THICK: f32 = 0.87;
 /// A node is safe when the next node along some axis is deeper by this many cells (a flat wall gives 0.577).
 const STEEP: f32 = 0.4;
@@ -150,7 +152,8 @@ impl<'l, 'f> Air<'l, 'f> {
         self.lattice.cell as f32
     }
 
-    /// Thin nodes without a deeper neighbour, then those whose only deeper neighbours are among them.
+    /// Nodes in a thin gap, or thin and without a deeper neighbour for another reason; then those whose
+    /// only deeper neighbours are among them.
     fn find_weak(&mut self) {
         let cell = self.cell();
         let found: Vec<Vec<([i32; 3], f32)>> =
@@ -317,7 +320,15 @@ fn weak_nodes(lattice: &Lattice<'_>, block: &Block<'_>, cell: f32) -> Vec<([i32;
                 let v = block.values[node_index([x, y, z])];
                 let deeper = |s: [i32; 3]| padded[padded_index(plus([x, y, z], s))] - v >= STEEP * cell;
                 if v > 0.0 && v < THICK * cell && !AXES.iter().any(|&s| deeper(s)) {
-                    out.push((plus(block.at.map(|b| b * BLOCK), [x, y, z]), v));
+                    let at = plus(block.at.map(|b| b * BLOCK), [x, y, z]);
+                    let p = lattice.node(at);
+                    let s = block.near.sample(&p);
+                    let facing = block.near.facing(&p, &s.gradient);
+                    // Two walls face each other here and leave enough air: the nodes see it as it is.
+                    if facing.is_finite() && s.value + facing >= f64::from(2.0 * THICK * cell) {
+                        continue;
+                    }
+                    out.push((at, v));
                 }
             }
         }

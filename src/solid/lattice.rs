@@ -16,6 +16,9 @@ pub(super) const BLOCK: i32 = 8;
 pub(super) const NODES: usize = 512;
 /// Values are exact up to this many cells above zero; beyond, only "at least this".
 const EXACT_CELLS: f64 = 1.8;
+/// A block's narrowed field is valid this many cells beyond its nodes: far enough to see what faces its walls
+/// across a thin gap.
+const MARGIN: i32 = 2;
 /// Significant bits of the cell edge.
 const CELL_BITS: i32 = 11;
 
@@ -67,7 +70,7 @@ impl<'f> Lattice<'f> {
         let (first, dims) = block_range(&bounds, block_mm);
         let range = Range { low: [0; 3], high: dims };
         let grid = Grid { cell, first };
-        let near = field.within(&grid.region(&range));
+        let near = field.within(&grid.region(&range).grown(f64::from(MARGIN) * cell));
         let mut found = Vec::new();
         descend(&grid, &range, near, &mut found);
         let mut states = vec![State::Air; dims.iter().map(|&d| d.unsigned_abs() as usize).product()];
@@ -228,7 +231,7 @@ fn descend<'f>(grid: &Grid, range: &Range, near: Box<dyn LocalField<'f> + 'f>, o
     };
     let visit = |r: &Range, out: &mut Vec<Found<'f>>| {
         let region = grid.region(r);
-        let near = near.narrowed(&region);
+        let near = near.narrowed(&region.grown(f64::from(MARGIN) * grid.cell));
         let (low, high) = near.range(&region);
         if high < 0.0 {
             out.push(Found::Material(Range { ..*r }));
