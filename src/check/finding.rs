@@ -48,3 +48,30 @@ pub struct Finding {
     /// Where the limit comes from: a published source, or "common practice, no source".
     pub source: String,
 }
+
+impl Finding {
+    /// The source of a limit that follows from what the tool is for and is published nowhere.
+    pub const OWN_RULE: &'static str = "rule of this tool, no source";
+
+    /// A figure given for information: passes, no limit, no advice.
+    #[must_use]
+    pub(crate) fn information(
+        check: &'static str,
+        value: f64,
+        unit: Unit,
+        message: String,
+        source: String,
+    ) -> Self {
+        Self {
+            check,
+            verdict: Verdict::Pass,
+            value,
+            limit: None,
+            unit,
+            place_mm: None,
+            message,
+            advice: String::new(),
+            source,
+        }
+    }
+}

@@ -88,6 +88,14 @@ impl Tree {
     /// (give `f64::INFINITY` for no limit).
     #[must_use]
     pub fn closest(&self, p: &Vec3, max_mm: f64) -> Option<Hit> {
+        self.closest_where(p, max_mm, |_, _| true)
+    }
+
+    /// Finds, among the triangles' nearest points that `accept` takes (triangle, its point nearest to `p`), the
+    /// one nearest to `p`; `None` when none of them is nearer than `max_mm`. `accept` is asked only about
+    /// points nearer than the best so far.
+    #[must_use]
+    pub fn closest_where(&self, p: &Vec3, max_mm: f64, accept: impl Fn(u32, &Vec3) -> bool) -> Option<Hit> {
         let mut best = Hit { triangle: u32::MAX, point: *p, distance: max_mm };
         let mut best2 = max_mm * max_mm;
         let mut stack = [(0_u32, 0.0_f64); STACK];
@@ -105,7 +113,7 @@ impl Tree {
                     for s in node.link as usize..(node.link + node.count) as usize {
                         let q = nearest_on(p, &self.triangles[s]);
                         let e2 = (q - p).norm_squared();
-                        if e2 < best2 {
+                        if e2 < best2 && accept(self.ids[s], &q) {
                             best2 = e2;
                             best = Hit { triangle: self.ids[s], point: q, distance: 0.0 };
                         }
