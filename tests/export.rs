@@ -7,6 +7,8 @@
 mod hostile;
 #[path = "export/read.rs"]
 mod read;
+#[path = "export/reference_set.rs"]
+mod reference_set;
 #[path = "export/write.rs"]
 mod write;
 

@@ -212,6 +212,8 @@ fn a_tag_of_an_extension_is_not_taken_for_one_of_the_core() {
         read_model(&model("requiredextensions=\"s q\"", &resources, "<item objectid=\"1\"/>")).unwrap();
     assert!((volume(&back.mesh) - 36.0).abs() < 1e-9);
     assert!(back.notes.contains(&ReadNote::Extensions("s, q".into())));
+    let elsewhere = model("requiredextensions=\"s\"", "<object id=\"1\"/>", "<item objectid=\"1\"/>");
+    assert!(matches!(read_model(&elsewhere), Err(ReadError::OnlyExtensions { .. })));
 }
 
 #[test]

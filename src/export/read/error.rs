@@ -51,6 +51,14 @@ pub enum ReadError {
         /// The format it was read as.
         format: MeshFormat,
     },
+    /// A 3MF file whose shapes are all in extensions that are not read.
+    #[error(
+        "the 3MF file holds no triangle mesh; its shape is in the extensions {names}, which are not read"
+    )]
+    OnlyExtensions {
+        /// Their prefixes in the file.
+        names: String,
+    },
     /// More than can be handled.
     #[error("{place}: the file holds more than {limit} {what}, the most that is read", limit = COUNT_MAX)]
     TooMany {

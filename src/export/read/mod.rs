@@ -55,6 +55,9 @@ pub fn read_mesh(bytes: &[u8], format: MeshFormat) -> Result<Imported, ReadError
         MeshFormat::ThreeMf => three_mf::read(bytes)?,
     };
     if imported.mesh.triangles.is_empty() {
+        if let Some(ReadNote::Extensions(names)) = imported.notes.last() {
+            return Err(ReadError::OnlyExtensions { names: names.clone() });
+        }
         return Err(ReadError::NoTriangles { format });
     }
     Ok(imported)
