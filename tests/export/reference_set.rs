@@ -73,7 +73,7 @@ fn a_planted_set_is_written_for_the_reference_checks() {
         stage(&folder, 2, &nested, 5, 2),
         stage(&folder, 3, &shell, 2, 1),
     ];
-    let set = json!({"schema": 1, "title": TITLE, "stages": stages, "verdict": "pass"});
+    let set = json!({"schema": 1, "title": TITLE, "profile": {"density_g_cm3": 1.24}, "failures": [], "stages": stages, "verdict": "pass"});
     fs::write(folder.join("set.json"), serde_json::to_string_pretty(&set).unwrap()).unwrap();
     let volume = set["stages"][2]["solid"]["volume_mm3"].as_f64().unwrap();
     // (4 pi / 3) (20^3 - 18^3) = 9080.0 mm3; level 4 of the icosphere loses 0.4 %.

@@ -253,8 +253,8 @@ def compare(stl, other, form, faults):
         faults.need(same, f"facets are not those of the STL file: {distance.max():.3g} mm apart")
 
 
-def check_entry(stage, number, faults):
-    """The entry of set.json itself."""
+def check_entry(stage, number, density, faults):
+    """The entry of set.json itself; `density` in g/cm3."""
     faults.need(stage["index"] == number, f"index is {stage['index']}, the place in the set {number}")
     faults.need(0.0 <= stage["tau"] <= 1.0, f"tau is {stage['tau']}")
     rows = stage["placement"]
@@ -263,7 +263,8 @@ def check_entry(stage, number, faults):
     scale = np.cbrt(np.linalg.det(linear))
     similar = scale > 0 and np.allclose(linear @ linear.T, scale**2 * np.eye(3), atol=1e-9 * scale**2)
     faults.need(similar, "placement is not a scaled proper rotation with a shift")
-    faults.need(stage["solid"]["mass_g"] > 0.0, f"mass is {stage['solid']['mass_g']} g")
+    mass = stage["solid"]["volume_mm3"] * density / 1000.0  # g/cm3 times mm3
+    faults.near(stage["solid"]["mass_g"], mass, 1e-9 * mass, "volume times density, against the mass in g,")
     for finding in stage["findings"]:
         keys = {"check", "verdict", "value", "limit", "unit", "place_mm", "source"}
         faults.need(keys <= set(finding), f"a finding has no {sorted(keys - set(finding))}")
@@ -292,15 +293,19 @@ def check_set(folder, say=print):
     try:
         record = json.loads((folder / "set.json").read_text(encoding="utf-8"), parse_constant=no_constant)
         stages, title = record["stages"], record["title"]
+        density = record["profile"]["density_g_cm3"]
     except (OSError, ValueError, KeyError) as error:
         say(f"FAILED set.json: {type(error).__name__}: {error}")
         return 0, 1
     if not stages:
         say("FAILED set.json: no stage")
         return 0, 1
+    for failure in record.get("failures", []):
+        failed += 1
+        say(f"FAILED set.json: a stage was not made: {failure}")
     for number, stage in enumerate(stages, start=1):
         corners = {}
-        judge(f"set.json, stage {number}", lambda f: check_entry(stage, number, f))
+        judge(f"set.json, stage {number}", lambda f: check_entry(stage, number, density, f))
         order = sorted(stage["files"], key=lambda form: (["stl", "obj", "3mf"] + [form]).index(form))
         for form in order:
             judge(stage["files"][form], lambda f: check_file(folder, stage, form, title, corners, f))
