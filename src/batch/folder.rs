@@ -59,6 +59,8 @@ pub enum FolderError {
 pub(super) struct Folder {
     path: PathBuf,
     made: BTreeSet<String>,
+    /// Folders that [`Folder::open`] made, outermost first.
+    new: Vec<PathBuf>,
     _lock: File,
 }
 
@@ -67,6 +69,12 @@ impl Folder {
     /// left, and refuses when one of `names` is there but was not made by this program.
     pub(super) fn open(path: &Path, names: &[String]) -> Result<Self, FolderError> {
         let not_writable = |source| FolderError::NotWritable { path: path.to_owned(), source };
+        let mut new: Vec<PathBuf> = path
+            .ancestors()
+            .take_while(|p| !p.as_os_str().is_empty() && !p.exists())
+            .map(Path::to_owned)
+            .collect();
+        new.reverse();
         match fs::metadata(path) {
             Ok(m) if !m.is_dir() => return Err(FolderError::NotAFolder { path: path.to_owned() }),
             Ok(_) => {}
@@ -109,7 +117,19 @@ impl Folder {
         probe.write_all(b"tried before the work\n").map_err(not_writable)?;
         probe.flush().map_err(not_writable)?;
         probe.close().map_err(not_writable)?;
-        Ok(Self { path: path.to_owned(), made, _lock: lock })
+        Ok(Self { path: path.to_owned(), made, new, _lock: lock })
+    }
+
+    /// Takes back what [`Folder::open`] made, when no work was begun after all.
+    pub(super) fn take_back(self) {
+        if self.made.is_empty() {
+            let _ = fs::remove_file(self.hidden().join("lock"));
+            let _ = fs::remove_dir(self.hidden());
+        }
+        for folder in self.new.iter().rev() {
+            // Refused by the system when something is in it.
+            let _ = fs::remove_dir(folder);
+        }
     }
 
     /// The folder.

@@ -231,8 +231,8 @@ fn gigabytes(bytes: u64) -> String {
 
 /// Makes a set.
 ///
-/// Before any work: the stages asked for exist, the plan fits into the memory, the folder can be written to
-/// and nothing in it would be lost. Then the stages in order; a stage that fails does not stop the others.
+/// Before any work: the stages asked for exist, the folder can be written to, nothing in it would be lost, and
+/// the plan fits into the memory. Then the stages in order; a stage that fails does not stop the others.
 /// A full disk or [`Watch::stopped`] ends the run; what is finished stays and is described in `set.json`.
 ///
 /// # Errors
@@ -244,11 +244,16 @@ pub fn run(request: &Request<'_>, maker: &dyn Maker, watch: &dyn Watch) -> Resul
         return Err(BatchError::NoSuchStage { index, count });
     }
     let pool = threads(request.threads)?;
-    let plan = maker.plan(job, request.profile)?;
-    let machine_bytes = request.memory_bytes.unwrap_or_else(machine_memory_bytes);
-    memory_fits(job, &plan, request.stages.as_deref(), machine_bytes)?;
     let names = names::all(job);
     let folder = Folder::open(request.out, &names)?;
+    let planned = maker.plan(job, request.profile).map_err(BatchError::from).and_then(|plan| {
+        let machine_bytes = request.memory_bytes.unwrap_or_else(machine_memory_bytes);
+        memory_fits(job, &plan, request.stages.as_deref(), machine_bytes)
+    });
+    if let Err(e) = planned {
+        folder.take_back();
+        return Err(e);
+    }
     let mut batch = Batch { request, maker, watch, folder, pictures: Vec::new(), full: false };
     Ok(match pool {
         Some(pool) => pool.install(|| batch.run(&names)),

@@ -69,10 +69,10 @@ pub(super) struct MakeArgs {
     #[arg(long, value_name = "DIR")]
     pub(super) out: Option<PathBuf>,
     /// Threads, 1 to 1024; default: all the machine has. The files do not depend on it
-    #[arg(long, value_name = "N", value_parser = threads, allow_negative_numbers = true)]
+    #[arg(long, value_name = "N", value_parser = threads, allow_hyphen_values = true)]
     pub(super) threads: Option<usize>,
     /// Make only stage K (from 1, in the order of the job); may be repeated
-    #[arg(long = "stage", value_name = "K", value_parser = stage, allow_negative_numbers = true)]
+    #[arg(long = "stage", value_name = "K", value_parser = stage, allow_hyphen_values = true)]
     pub(super) stages: Vec<usize>,
     /// Make stages again that an earlier run has finished
     #[arg(long)]
