@@ -1,4 +1,4 @@
-//! Skins: families of eversions and their sampling.
+//! Skins: families of eversions, their sampling and their figures.
 
 mod catalogue;
 mod extent;

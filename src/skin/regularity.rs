@@ -143,3 +143,52 @@ fn integrals_by(stage: &dyn StageSurface, nodes: usize, longitudes: u32) -> [f64
         .collect();
     rows.iter().fold([0.0; 4], |t, r| std::array::from_fn(|k| t[k] + r[k]))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::geom::{FirstJet, SecondJet};
+
+    /// The ellipsoid of revolution with half axes a, a, c, side A outside.
+    struct Spheroid(Vec3);
+
+    impl Surface for Spheroid {
+        fn position(&self, p: Vec3) -> Vec3 {
+            p.component_mul(&self.0)
+        }
+        fn first(&self, p: Vec3, e1: Vec3, e2: Vec3) -> FirstJet {
+            FirstJet { position: self.position(p), d1: self.position(e1), d2: self.position(e2) }
+        }
+        fn second(&self, p: Vec3, e1: Vec3, e2: Vec3) -> SecondJet {
+            let j = self.first(p, e1, e2);
+            let (d11, d12, d22) = (-j.position, Vec3::zeros(), -j.position);
+            SecondJet { position: j.position, d1: j.d1, d2: j.d2, d11, d12, d22 }
+        }
+    }
+
+    impl StageSurface for Spheroid {
+        fn tau(&self) -> f64 {
+            0.0
+        }
+        fn fold_margin(&self) -> Option<f64> {
+            None
+        }
+    }
+
+    #[test]
+    fn an_oblate_spheroid_has_the_figures_of_the_textbook() {
+        let (a, c) = (2.0_f64, 1.0_f64);
+        let f = figures(&Spheroid(Vec3::new(a, a, c)));
+        // area 2 pi a^2 + pi c^2 / e ln((1 + e) / (1 - e)), e^2 = 1 - c^2 / a^2
+        let e = (1.0 - c * c / (a * a)).sqrt();
+        let area = 2.0 * PI * a * a + PI * c * c / e * ((1.0 + e) / (1.0 - e)).ln();
+        assert!((f.area / area - 1.0).abs() < 1e-12);
+        assert!((f.signed_volume / (4.0 / 3.0 * PI * a * a * c) - 1.0).abs() < 1e-12);
+        assert!(f.quadrature_error < 1e-12);
+        // the rim is bent most: radius c^2 / a; the map squeezes most on the equator: c against a
+        assert!((f.min_radius - c * c / a).abs() < 1e-9, "{}", f.min_radius);
+        assert!(f.min_radius_at.z.abs() < 1e-4);
+        assert!((f.sigma_min - c).abs() < 1e-9 && (f.sigma_ratio_min - c / a).abs() < 1e-9);
+        assert!((f.ball.radius - a).abs() < 1e-12 && f.ball.z.abs() < 1e-6);
+    }
+}

@@ -284,6 +284,14 @@ impl<'s> Sampler<'s> {
         let (u, j) = self.mesh.across(t, i);
         let (now_t, now_u) = (self.mesh.corners[t], self.mesh.corners[u]);
         let (a, b, c, d) = (now_t[i], now_t[next(i)], now_t[before(i)], now_u[before(j)]);
+        // two acute angles opposite the edge: it is the better diagonal already (Delaunay, cheap to see)
+        let acute = |top: u32| {
+            let x = self.place(top);
+            (self.place(a) - x).dot(&(self.place(b) - x)) > 0.0
+        };
+        if acute(c) && acute(d) {
+            return false;
+        }
         let sharpest = |c: [u32; 3]| largest_cosine(self.triangle(c));
         let now = sharpest(now_t).max(sharpest(now_u));
         let (new_t, new_u) = ([c, a, d], [d, b, c]);
