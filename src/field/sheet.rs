@@ -178,7 +178,10 @@ fn single(p: &Vec3) -> [f32; 3] {
 const SLACK: f32 = 2e-4;
 
 impl<'f> SheetNear<'f> {
-    #[expect(clippy::cast_possible_truncation, reason = "a reach computed in f32 and widened by its rounding")]
+    #[expect(
+        clippy::cast_possible_truncation,
+        reason = "a reach computed in f32 and widened by its rounding"
+    )]
     fn pruned(field: &'f SheetField<'f>, ids: impl Iterator<Item = u32> + Clone, region: &Aabb) -> Self {
         let c = single(&region.centre());
         let reach = region.extent().norm() as f32 + 2.0 * field.chord as f32 + SLACK;

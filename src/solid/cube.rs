@@ -27,20 +27,8 @@ pub(super) const CORNERS: [[i32; 3]; 8] =
     [[0, 0, 0], [1, 0, 0], [0, 1, 0], [1, 1, 0], [0, 0, 1], [1, 0, 1], [0, 1, 1], [1, 1, 1]];
 
 /// Edge `4 a + k` runs along axis `a`; the pair is its lower and its upper corner.
-pub(super) const EDGES: [[u8; 2]; 12] = [
-    [0, 1],
-    [2, 3],
-    [4, 5],
-    [6, 7],
-    [0, 2],
-    [1, 3],
-    [4, 6],
-    [5, 7],
-    [0, 4],
-    [1, 5],
-    [2, 6],
-    [3, 7],
-];
+pub(super) const EDGES: [[u8; 2]; 12] =
+    [[0, 1], [2, 3], [4, 5], [6, 7], [0, 2], [1, 3], [4, 6], [5, 7], [0, 4], [1, 5], [2, 6], [3, 7]];
 
 /// Face `2 a + s` lies across axis `a`, at coordinate `s`; corners counter-clockwise from outside.
 pub(super) const FACES: [[u8; 4]; 6] =
@@ -113,9 +101,8 @@ fn apexes(l: &Loop) -> Vec<u8> {
         let c = FACES[usize::from(face)];
         EDGES[usize::from(edge)].iter().all(|e| c.contains(e))
     };
-    let clear = |&k: &usize| {
-        (0..n).filter(|&s| s != k && (s + 1) % n != k).all(|s| !on_face(l.edges[k], l.faces[s]))
-    };
+    let clear =
+        |&k: &usize| (0..n).filter(|&s| s != k && (s + 1) % n != k).all(|s| !on_face(l.edges[k], l.faces[s]));
     (0..n).filter(clear).filter_map(|k| u8::try_from(k).ok()).collect()
 }
 

@@ -125,9 +125,8 @@ fn block_vertices(lattice: &Lattice<'_>, block: &Block<'_>) -> BlockVertices {
         m
     };
     for l in locals() {
-        let pattern = (0u8..8)
-            .filter(|&c| value(add(l, CORNERS[usize::from(c)])) <= 0.0)
-            .fold(0u8, |p, c| p | 1 << c);
+        let pattern =
+            (0u8..8).filter(|&c| value(add(l, CORNERS[usize::from(c)])) <= 0.0).fold(0u8, |p, c| p | 1 << c);
         if pattern != 0 && pattern != 255 {
             out.cells.push((small(node_index(l)), pattern));
         }
@@ -285,9 +284,8 @@ impl<'v, 'f> View<'v, 'f> {
             return None;
         }
         let across = normals[i].cross(&normals[j]).try_normalize(1e-6)?;
-        let third = (0..normals.len()).max_by(|&a, &b| {
-            normals[a].dot(&across).abs().total_cmp(&normals[b].dot(&across).abs())
-        })?;
+        let third = (0..normals.len())
+            .max_by(|&a, &b| normals[a].dot(&across).abs().total_cmp(&normals[b].dot(&across).abs()))?;
         let mut pieces = vec![ring[i].1.piece, ring[j].1.piece];
         if normals[third].dot(&across).abs() > 0.5 {
             pieces.push(ring[third].1.piece);

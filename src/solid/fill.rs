@@ -206,8 +206,9 @@ impl<'l, 'f> Air<'l, 'f> {
                 let mut next = at;
                 next[axis] += 1;
                 if state == State::Air {
-                    let at_border =
-                        (0..3).any(|k| at[k] == lattice.first[k] || at[k] + 1 == lattice.first[k] + lattice.dims[k]);
+                    let at_border = (0..3).any(|k| {
+                        at[k] == lattice.first[k] || at[k] + 1 == lattice.first[k] + lattice.dims[k]
+                    });
                     if at_border {
                         self.regions.join(self.outside[&at], border);
                     }
@@ -430,9 +431,11 @@ mod tests {
 
     /// Euler number and number of parts of the surface in the 3 x 3 x 3 nodes' cells, closed by air outside.
     fn surface(air: &[bool; 27]) -> (i64, usize) {
-        let inside = |p: [i32; 3]| p.iter().all(|c| (-1..=1).contains(c)) && {
-            let n = (p[0] + 1 + 3 * (p[1] + 1) + 9 * (p[2] + 1)).unsigned_abs() as usize;
-            !air[n]
+        let inside = |p: [i32; 3]| {
+            p.iter().all(|c| (-1..=1).contains(c)) && {
+                let n = (p[0] + 1 + 3 * (p[1] + 1) + 9 * (p[2] + 1)).unsigned_abs() as usize;
+                !air[n]
+            }
         };
         let mut vertices = BTreeMap::new();
         let (mut faces, mut edges) = (0i64, 0i64);

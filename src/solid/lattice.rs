@@ -286,8 +286,9 @@ fn split(
             None
         };
         match uniform {
-            Some(v) => Range { low, high: low.map(|l| l + half) }
-                .for_each(|l| values[node_index(l)] = signed_f32(v)),
+            Some(v) => {
+                Range { low, high: low.map(|l| l + half) }.for_each(|l| values[node_index(l)] = signed_f32(v))
+            }
             None if half == BLOCK / 2 => {
                 split(grid, corner, low, half, near.narrowed(&region).as_ref(), values);
             }
@@ -313,7 +314,11 @@ mod tests {
             assert!(cell <= wanted && cell > 0.999 * wanted);
             for k in [1, 77, 1023, 8191] {
                 let x = f64::from(k) * cell;
-                #[expect(clippy::cast_possible_truncation, clippy::float_cmp, reason = "exactness is the point")]
+                #[expect(
+                    clippy::cast_possible_truncation,
+                    clippy::float_cmp,
+                    reason = "exactness is the point"
+                )]
                 let same = f64::from(x as f32) == x;
                 assert!(same, "{k} * {cell}");
             }
