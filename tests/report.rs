@@ -5,4 +5,5 @@ mod report {
     mod json;
     mod pictures;
     pub(crate) mod sample;
+    mod sheet;
 }

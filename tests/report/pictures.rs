@@ -150,9 +150,9 @@ fn a_stage_has_its_six_views_at_one_scale() {
         p.z += 40.0;
     }
     let pictures = stage_pictures(&mesh, 80.0, &Look::default()).unwrap();
-    let names: Vec<&str> = pictures.all().map(|p| p.name).collect();
+    let names: Vec<&str> = pictures.all.iter().map(|p| p.name).collect();
     assert_eq!(names, ["portrait", "opened", "front", "side", "top", "section"]);
-    for picture in pictures.all() {
+    for picture in &pictures.all {
         let (width, height, seen) = pixels(&picture.png);
         assert_eq!([width, height], picture.size_px);
         assert!(picture.png.len() < 120_000, "{} has {} bytes", picture.name, picture.png.len());
@@ -167,7 +167,7 @@ fn a_stage_has_its_six_views_at_one_scale() {
         );
         assert_eq!(seen[0], [255; 3]);
     }
-    let opened = pixels(&pictures.all().nth(1).unwrap().png).2;
+    let opened = pixels(&pictures.all[1].png).2;
     assert!(share(&opened, is_sand) > 0.1, "the inside is seen");
 }
 

@@ -7,18 +7,20 @@ use rayon::prelude::*;
 use std::collections::BTreeMap;
 
 /// A picture of 8-bit sRGB colours, row by row from the top.
-#[derive(Clone, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Image {
     width: u32,
     height: u32,
     paper: [u8; 3],
     pixels: Vec<[u8; 3]>,
+    /// mm a pixel, written into the PNG.
+    scale_mm: f64,
 }
 
 impl Image {
-    /// Empty paper.
-    pub(super) fn blank(width: u32, height: u32, paper: [u8; 3]) -> Self {
-        Self { width, height, paper, pixels: vec![paper; width as usize * height as usize] }
+    /// Empty paper at a scale of so many mm a pixel.
+    pub(super) fn blank(width: u32, height: u32, paper: [u8; 3], scale_mm: f64) -> Self {
+        Self { width, height, paper, pixels: vec![paper; width as usize * height as usize], scale_mm }
     }
 
     /// Averages the samples of each pixel, in linear light.
@@ -44,7 +46,8 @@ impl Image {
             }
         });
         let side = |x: usize| u32::try_from(x).unwrap_or(u32::MAX);
-        Self { width: side(width), height: side(height), paper, pixels }
+        let scale_mm = camera.step * n as f64;
+        Self { width: side(width), height: side(height), paper, pixels, scale_mm }
     }
 
     /// Width, pixels.
@@ -75,13 +78,16 @@ impl Image {
         }
     }
 
-    /// Writes the picture as PNG with at most 256 colours.
+    /// Writes the picture as PNG with at most 256 colours. Its resolution entry (pHYs) is the scale of the
+    /// drawing: shown at that resolution the solid has its own size.
     ///
     /// # Errors
     /// [`PictureError::Encode`] when the PNG writer refuses; it has no reason to.
     pub fn to_png(&self) -> Result<Vec<u8>, PictureError> {
         let (palette, indices) = self.reduced();
         let colours: Vec<u8> = palette.iter().flatten().copied().collect();
+        let per_metre = pixels_per_metre(self.scale_mm);
+        let resolution = png::PixelDimensions { xppu: per_metre, yppu: per_metre, unit: png::Unit::Meter };
         let mut best: Option<Vec<u8>> = None;
         // Which filter packs an indexed picture best depends on the picture.
         for filter in [png::Filter::NoFilter, png::Filter::Adaptive] {
@@ -92,6 +98,7 @@ impl Image {
             encoder.set_palette(colours.as_slice());
             encoder.set_compression(png::Compression::High);
             encoder.set_filter(filter);
+            encoder.set_pixel_dims(Some(resolution));
             let mut writer = encoder.write_header()?;
             writer.write_image_data(&indices)?;
             writer.finish()?;
@@ -186,6 +193,11 @@ impl Group {
     }
 }
 
+#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "float casts saturate")]
+fn pixels_per_metre(scale_mm: f64) -> u32 {
+    (1000.0 / scale_mm).round() as u32
+}
+
 /// sRGB code of a linear intensity (IEC 61966-2-1), clamped to 0..=1.
 #[expect(
     clippy::cast_possible_truncation,
@@ -218,7 +230,7 @@ mod tests {
 
     #[test]
     fn few_colours_are_kept_exactly_and_many_nearly() {
-        let mut image = Image::blank(64, 64, [255; 3]);
+        let mut image = Image::blank(64, 64, [255; 3], 1.0);
         for (k, pixel) in (0_u8..200).zip(image.pixels.iter_mut()) {
             *pixel = [k, 255 - k, 17];
         }

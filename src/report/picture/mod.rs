@@ -18,7 +18,7 @@ pub use camera::{Frame, Section, View};
 pub use image::Image;
 pub use overview::overview;
 pub use shade::Look;
-pub use stage::{Picture, StagePictures, stage_pictures};
+pub use stage::{Picture, StagePictures, VIEWS, stage_pictures};
 
 use crate::mesh::TriMesh;
 use camera::Camera;

@@ -20,7 +20,7 @@ pub fn overview(meshes: &[&TriMesh], cell_px: u32, look: &Look) -> Result<Image,
         return Err(PictureError::Size(width, height));
     }
     let width_mm = meshes.iter().map(|m| common_width(m, 0.0)).fold(1e-6, f64::max);
-    let mut sheet = Image::blank(width, height, look.paper);
+    let mut sheet = Image::blank(width, height, look.paper, width_mm / f64::from(cell_px));
     for (column, mesh) in (0_u32..).zip(meshes) {
         for (row, section) in [(0, None), (1, Some(middle_section(mesh)))] {
             let view = View {

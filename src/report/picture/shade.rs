@@ -83,6 +83,10 @@ const GLOSS: f32 = 0.05;
 const GLOSS_POWER: i32 = 22;
 /// How much of the paper's light a full shadow on the plate takes.
 const SHADOW_DEPTH: f32 = 0.62;
+/// The light is evened out with spacings up to the width of the picture by this; each sees about twice as far.
+const WIDEST_SPACING: usize = 20;
+/// The shadow on the plate is evened out less than hollows are, so that it stays dark where the solid stands.
+const WIDEST_ON_PLATE: usize = 80;
 /// Share of the way from the edge of the picture to its middle in which a shadow fades in.
 const SHADOW_FADE: f32 = 0.25;
 
@@ -131,7 +135,7 @@ impl Spot {
 /// Evens out the light over neighbours on the same piece of surface, so that the finite number of light
 /// directions leaves no steps.
 ///
-/// A filter with holes: passes along rows and columns with spacing 1, 2, 4, 8 and 16 samples, each weighing a
+/// A filter with holes: passes along rows and columns with spacing 1, 2, 4, 8, ... samples, each weighing a
 /// neighbour by how well its normal and its depth agree. After H. Dammertz et al., "Edge-Avoiding A-Trous
 /// Wavelet Transform for fast Global Illumination Filtering", HPG 2010; made separable here.
 fn smooth(spots: &[Spot], camera: &Camera, radius: f64) -> Vec<f32> {
@@ -139,13 +143,16 @@ fn smooth(spots: &[Spot], camera: &Camera, radius: f64) -> Vec<f32> {
     let mut light: Vec<f32> = spots.iter().map(|s| s.light).collect();
     let mut next = light.clone();
     let reach = nearest_f32(0.012 * radius);
-    for spacing in [1, 2, 4, 8, 16] {
+    let widest = (width / WIDEST_SPACING).max(1);
+    for spacing in (0..).map(|k| 1 << k).take_while(|&s| s <= widest) {
         for along_rows in [true, false] {
             next.par_chunks_mut(width).enumerate().for_each(|(row, out)| {
                 for (column, value) in out.iter_mut().enumerate() {
                     let k = row * width + column;
                     let here = &spots[k];
-                    if matches!(here.kind, Kind::Paper | Kind::Cut) {
+                    let plate_done = here.kind == Kind::Plate && spacing > width / WIDEST_ON_PLATE;
+                    if plate_done || matches!(here.kind, Kind::Paper | Kind::Cut) {
+                        *value = light[k];
                         continue;
                     }
                     let (place, length, stride) =

@@ -5,36 +5,41 @@ use super::{Easel, Look, PictureError};
 use crate::geom::Vec3;
 use crate::mesh::TriMesh;
 
-/// One picture with the words that go with it.
+/// One picture of a stage.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Picture {
-    /// Name of the view: `portrait`, `opened`, `front`, `side`, `top`, `section`.
+    /// Name of the view, one of [`VIEWS`].
     pub name: &'static str,
-    /// What is seen, for the caption.
-    pub caption: &'static str,
     /// Width and height, pixels.
     pub size_px: [u32; 2],
     /// The picture, PNG.
     pub png: Vec<u8>,
 }
 
-/// All pictures of one stage.
+/// All pictures of one stage, in the order of [`VIEWS`].
 #[derive(Clone, Debug, PartialEq)]
 pub struct StagePictures {
-    /// From the front, right and above.
-    pub portrait: Picture,
-    /// The same, with the front half taken away.
-    pub opened: Picture,
-    /// Seen along +y, along -x and along -z, then the cut through the middle seen along +y.
-    pub plain: [Picture; 4],
+    /// The pictures.
+    pub all: Vec<Picture>,
     /// Width of every picture, mm.
     pub width_mm: f64,
 }
 
+/// The views of a stage, name and caption.
+pub const VIEWS: [(&str, &str); 6] = [
+    ("portrait", "from the front, right and above"),
+    ("opened", "the same, front half taken away"),
+    ("front", "seen along +y"),
+    ("side", "the right side, seen along -x"),
+    ("top", "seen along -z"),
+    ("section", "cut through the middle, seen along +y"),
+];
+
 impl StagePictures {
-    /// All pictures in the order of the sheet.
-    pub fn all(&self) -> impl Iterator<Item = &Picture> {
-        [&self.portrait, &self.opened].into_iter().chain(&self.plain)
+    /// Names and PNG bytes, as [`crate::report::sheet_html`] takes them.
+    #[must_use]
+    pub fn into_named(self) -> Vec<(String, Vec<u8>)> {
+        self.all.into_iter().map(|p| (p.name.to_owned(), p.png)).collect()
     }
 }
 
@@ -63,31 +68,28 @@ pub fn stage_pictures(mesh: &TriMesh, size_mm: f64, look: &Look) -> Result<Stage
     let section = middle_section(mesh);
     let whole = Easel::new(mesh, None);
     let cut = Easel::new(mesh, Some(section));
-    let take = |easel: &Easel, name, caption, direction: Vec3, up: Vec3, side: u32, ground: bool| {
+    let mut all = Vec::with_capacity(VIEWS.len());
+    for (name, _) in VIEWS {
+        let (easel, direction, side, ground) = match name {
+            "opened" => (&cut, PORTRAIT, LARGE_PX, true),
+            "front" => (&whole, -Vec3::y(), PLAIN_PX, false),
+            "side" => (&whole, Vec3::x(), PLAIN_PX, false),
+            "top" => (&whole, Vec3::z(), PLAIN_PX, true),
+            "section" => (&cut, -Vec3::y(), PLAIN_PX, false),
+            _ => (&whole, PORTRAIT, LARGE_PX, true),
+        };
         let view = View {
             direction,
-            up,
+            up: if name == "top" { Vec3::y() } else { Vec3::z() },
             frame: frame(mesh, width_mm),
             size_px: [side; 2],
             section: None,
             supersample: 2,
             ground,
         };
-        let png = easel.draw(&view, look)?.to_png()?;
-        Ok::<_, PictureError>(Picture { name, caption, size_px: [side; 2], png })
-    };
-    let z = Vec3::z();
-    Ok(StagePictures {
-        portrait: take(&whole, "portrait", "from the front, right and above", PORTRAIT, z, LARGE_PX, true)?,
-        opened: take(&cut, "opened", "the same, front half taken away", PORTRAIT, z, LARGE_PX, true)?,
-        plain: [
-            take(&whole, "front", "front, seen along +y", -Vec3::y(), z, PLAIN_PX, false)?,
-            take(&whole, "side", "right side, seen along -x", Vec3::x(), z, PLAIN_PX, false)?,
-            take(&whole, "top", "top, seen along -z", z, Vec3::y(), PLAIN_PX, true)?,
-            take(&cut, "section", "cut through the middle, seen along +y", -Vec3::y(), z, PLAIN_PX, false)?,
-        ],
-        width_mm,
-    })
+        all.push(Picture { name, size_px: [side; 2], png: easel.draw(&view, look)?.to_png()? });
+    }
+    Ok(StagePictures { all, width_mm })
 }
 
 /// The plane through the middle of the solid that faces the front.
