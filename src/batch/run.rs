@@ -463,6 +463,8 @@ impl Batch<'_> {
             }
         }
         texts.push(("set.json", crate::report::set_json(record).into_bytes()));
+        texts.push(("sheet.html", crate::report::sheet_html(record, &self.pictures).into_bytes()));
+        texts.push(("cautions.txt", crate::report::cautions_text(record).into_bytes()));
         for (name, bytes) in texts {
             let written =
                 write_whole(&mut self.folder, Place::Visible, name, &|| false, |w| Ok(w.write_all(&bytes)?));
