@@ -6,6 +6,7 @@
 //! Blocks that a 1-Lipschitz bound proves free of the zero set are never sampled, so time and memory
 //! follow the surface. What is kept for them is one sign a block.
 
+use super::probe::Probe;
 use crate::field::{Field, LocalField};
 use crate::geom::{Aabb, Vec3};
 use rayon::prelude::*;
@@ -140,6 +141,19 @@ impl<'f> Lattice<'f> {
     /// The position of a node, mm.
     pub(super) fn node(&self, n: [i32; 3]) -> Vec3 {
         Vec3::new(f64::from(n[0]), f64::from(n[1]), f64::from(n[2])) * self.cell
+    }
+
+    /// Gives up the values and keeps the narrowed fields.
+    pub(super) fn into_probe(self, field: &'f dyn Field) -> Probe<'f> {
+        Probe {
+            field,
+            block_mm: self.cell * f64::from(BLOCK),
+            margin_mm: self.cell * f64::from(MARGIN),
+            first: self.first,
+            dims: self.dims,
+            states: self.states,
+            near: self.blocks.into_iter().map(|b| b.near).collect(),
+        }
     }
 
     /// All blocks with their coordinates, in a fixed order.

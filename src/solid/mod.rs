@@ -6,10 +6,12 @@ mod extract;
 mod fill;
 mod finish;
 mod lattice;
+mod probe;
 mod shells;
 mod solidify;
 
 pub use audit::{Audit, Fault, FaultKind, KEPT_PER_KIND, audit};
 pub use finish::finish;
+pub use probe::Probe;
 pub use shells::Shell;
 pub use solidify::{GridError, GridSettings, Meshed, block_estimate, solidify};

@@ -3,6 +3,7 @@
 use super::extract::extract;
 use super::fill::fill_thin_air;
 use super::lattice::{BLOCK, Lattice, block_range, exact_cell};
+use super::probe::Probe;
 use crate::field::Field;
 use crate::geom::Vec3;
 use crate::mesh::{TriMesh, components};
@@ -22,8 +23,7 @@ pub struct GridSettings {
 }
 
 /// A meshed field.
-#[derive(Clone, Debug)]
-pub struct Meshed {
+pub struct Meshed<'f> {
     /// Closed, two-manifold, outward, free of self-crossings; every coordinate exact in f32.
     pub mesh: TriMesh,
     /// Edge of a cell as used, mm.
@@ -36,6 +36,10 @@ pub struct Meshed {
     pub filled_voids: usize,
     /// Loose bits of material smaller than the crumb, dropped.
     pub dropped_crumbs: usize,
+    /// Volume of all of these, mm3.
+    pub crumbs_mm3: f64,
+    /// The exact field, quick near the mesh.
+    pub probe: Probe<'f>,
 }
 
 /// Why a field could not be meshed.
@@ -79,7 +83,7 @@ pub enum GridError {
 ///
 /// # Errors
 /// [`GridError`] when the cell is not a positive length, too fine for the part, or nothing is left.
-pub fn solidify(field: &dyn Field, settings: &GridSettings) -> Result<Meshed, GridError> {
+pub fn solidify<'f>(field: &'f dyn Field, settings: &GridSettings) -> Result<Meshed<'f>, GridError> {
     let wanted = settings.cell_mm;
     if !(wanted.is_finite() && wanted > 0.0) {
         return Err(GridError::Cell(wanted));
@@ -95,8 +99,8 @@ pub fn solidify(field: &dyn Field, settings: &GridSettings) -> Result<Meshed, Gr
     let mut lattice = Lattice::sample(field, cell);
     let filled = fill_thin_air(&mut lattice);
     let mesh = extract(&lattice);
-    drop(lattice);
-    let (mesh, filled_voids, dropped_crumbs) = without_crumbs(mesh, settings.crumb_mm3);
+    let probe = lattice.into_probe(field);
+    let (mesh, filled_voids, dropped_crumbs, crumbs_mm3) = without_crumbs(mesh, settings.crumb_mm3);
     if mesh.triangles.is_empty() {
         return Err(GridError::Empty(wanted));
     }
@@ -107,15 +111,18 @@ pub fn solidify(field: &dyn Field, settings: &GridSettings) -> Result<Meshed, Gr
         filled_deepest_mm: f64::from(filled.deepest_mm),
         filled_voids,
         dropped_crumbs,
+        crumbs_mm3,
+        probe,
     })
 }
 
-/// Leaves out closed shells with less volume than `crumb_mm3`; counts those of air and of material.
-fn without_crumbs(mesh: TriMesh, crumb_mm3: f64) -> (TriMesh, usize, usize) {
+/// Leaves out closed shells with less volume than `crumb_mm3`; counts those of air and of material and sums
+/// their volumes.
+fn without_crumbs(mesh: TriMesh, crumb_mm3: f64) -> (TriMesh, usize, usize, f64) {
     let parts = components(&mesh);
     let small: Vec<_> = parts.iter().filter(|c| c.volume_mm3.abs() < crumb_mm3).collect();
     if small.is_empty() {
-        return (mesh, 0, 0);
+        return (mesh, 0, 0, 0.0);
     }
     let voids = small.iter().filter(|c| c.volume_mm3 < 0.0).count();
     let mut keep = vec![true; mesh.triangles.len()];
@@ -133,7 +140,8 @@ fn without_crumbs(mesh: TriMesh, crumb_mm3: f64) -> (TriMesh, usize, usize) {
         }));
         out.sides.push(mesh.sides[t]);
     }
-    (out, voids, small.len() - voids)
+    let volume = small.iter().map(|c| c.volume_mm3.abs()).sum();
+    (out, voids, small.len() - voids, volume)
 }
 
 /// Blocks of the sign table and sampled blocks an area of boundary needs, for estimates of memory.
