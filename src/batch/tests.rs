@@ -8,6 +8,7 @@ use crate::mesh::{Side, TriMesh};
 use crate::pipeline::{Plan, PlanError, Progress, Stage, StageError, StagePlan, Step};
 use crate::profile::Profile;
 use crate::report::{RegularityRecord, SkinRecord, SolidRecord, StageRecord};
+use crate::solid::GridError;
 use crate::units::Unit;
 use std::collections::BTreeMap;
 use std::fs;
@@ -52,7 +53,7 @@ impl Maker for Tetrahedra {
             return Err(StageError::Stopped);
         }
         if self.fails == Some(index) {
-            return Err(StageError::NotBuilt { index });
+            return Err(StageError::Grid(GridError::Empty(1.0)));
         }
         let made = self.made.fetch_add(1, Ordering::SeqCst) + 1;
         if self.stop_after.is_some_and(|n| made > n) {
