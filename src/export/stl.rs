@@ -42,6 +42,7 @@ fn facet_normal(corners: &[[f32; 3]; 3]) -> [f32; 3] {
 mod tests {
     use super::*;
 
+    #[expect(clippy::float_cmp, reason = "exact values are expected")]
     #[test]
     fn normals_are_unit_and_outward_even_for_tiny_triangles() {
         assert_eq!(facet_normal(&[[0.0; 3], [3.0, 0.0, 0.0], [0.0, 4.0, 0.0]]), [0.0, 0.0, 1.0]);

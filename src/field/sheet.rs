@@ -163,7 +163,6 @@ struct SheetNear<'f> {
     balls: Vec<[f32; 4]>,
 }
 
-#[expect(clippy::cast_possible_truncation, reason = "a reach computed in f32 and widened by its rounding")]
 fn gap(b: &[f32; 4], c: [f32; 3]) -> f32 {
     let (x, y, z) = (b[0] - c[0], b[1] - c[1], b[2] - c[2]);
     (x * x + y * y + z * z).sqrt()

@@ -173,9 +173,7 @@ pub fn make_stage(
     let look = Look::of_sides(job.colour_a, job.colour_b);
     let pictures = stage_pictures(&solid.mesh, job.size_mm, &look)
         .map_err(|e| StageError::Picture(e.to_string()))?
-        .all()
-        .map(|p| (p.name.to_owned(), p.png.clone()))
-        .collect();
+        .into_named();
 
     let volume_mm3 = measure::signed_mass(&solid.mesh).volume_mm3;
     let bounds = solid.mesh.bounds();

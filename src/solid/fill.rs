@@ -407,6 +407,7 @@ impl Neighbourhood {
                 part[s] = firsts.len();
                 let mut stack = vec![s];
                 while let Some(a) = stack.pop() {
+                    #[expect(clippy::needless_range_loop, reason = "b names a neighbour, not only a slot")]
                     for b in 0..27 {
                         let step = length(a, b) <= reach && close(a, b);
                         if b != 13 && part[b] == 0 && step && counts(b, wanted) {
