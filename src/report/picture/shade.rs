@@ -74,7 +74,7 @@ const FILL: ([f64; 3], f64, f64) = ([0.80, 0.12, 0.58], 5.0, 0.7);
 /// Light from all around, and its gain from straight below to straight above.
 const AMBIENT: [f64; 2] = [0.22, 0.50];
 /// Light that reaches even the bottom of a hollow, as a share of full light.
-const FLOOR_LIGHT: f32 = 0.07;
+const FLOOR_LIGHT: f32 = 0.11;
 /// How bright a surface facing the main light is drawn; above 1 because few surfaces do.
 const EXPOSURE: f64 = 1.32;
 /// Strength and spread of the sheen that shows which way a surface bends.
@@ -84,9 +84,10 @@ const GLOSS_POWER: i32 = 22;
 /// How much of the paper's light a full shadow on the plate takes.
 const SHADOW_DEPTH: f32 = 0.62;
 /// The light is evened out with spacings up to the width of the picture by this; each sees about twice as far.
-const WIDEST_SPACING: usize = 20;
+/// Wider spacings leave echoes of edges.
+const WIDEST_SPACING: usize = 60;
 /// The shadow on the plate is evened out less than hollows are, so that it stays dark where the solid stands.
-const WIDEST_ON_PLATE: usize = 80;
+const WIDEST_ON_PLATE: usize = 120;
 /// Share of the way from the edge of the picture to its middle in which a shadow fades in.
 const SHADOW_FADE: f32 = 0.25;
 
@@ -104,6 +105,9 @@ pub(super) fn paint(scene: &Scene, camera: &Camera, layer: &Layer, look: &Look) 
     });
     out
 }
+
+/// The middle and one side of the filter that evens out the light: a cubic B-spline.
+const TAPS: [f32; 3] = [6.0, 4.0, 1.0];
 
 /// What a sample shows.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -157,14 +161,17 @@ fn smooth(spots: &[Spot], camera: &Camera, radius: f64) -> Vec<f32> {
                     }
                     let (place, length, stride) =
                         if along_rows { (column, width, 1) } else { (row, camera.height, width) };
-                    let mut sum = 2.0 * light[k];
-                    let mut total = 2.0;
-                    let before = (place >= spacing).then(|| k - spacing * stride);
-                    let after = (place + spacing < length).then(|| k + spacing * stride);
-                    for other in before.into_iter().chain(after) {
-                        let weight = likeness(here, &spots[other], reach, spacing);
-                        sum += weight * light[other];
-                        total += weight;
+                    let mut sum = TAPS[0] * light[k];
+                    let mut total = TAPS[0];
+                    for (steps, tap) in TAPS.iter().enumerate().skip(1) {
+                        let away = steps * spacing;
+                        let before = (place >= away).then(|| k - away * stride);
+                        let after = (place + away < length).then(|| k + away * stride);
+                        for other in before.into_iter().chain(after) {
+                            let weight = tap * likeness(here, &spots[other], reach, away);
+                            sum += weight * light[other];
+                            total += weight;
+                        }
                     }
                     *value = sum / total;
                 }

@@ -11,7 +11,7 @@ use crate::mesh::TriMesh;
 use rayon::prelude::*;
 
 /// Directions over the whole sphere; about half of them light a given point. Fewer leave steps in the shadows.
-const DIRECTIONS: usize = 96;
+const DIRECTIONS: usize = 128;
 
 /// Side of a depth map, texels: a tenth of a typical wall is not resolved, a typical chamber is.
 const MAP: usize = 192;

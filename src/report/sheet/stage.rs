@@ -182,6 +182,7 @@ fn files(record: &StageRecord) -> Markup {
             }
         }
         p .soft {
+            @if record.files.contains_key("obj") { "The OBJ file takes its colours from the material file beside it. " }
             "STL and OBJ files carry no unit: their numbers are mm. Placement, from the family's own \
              coordinates to the mm of the files: "
             @for (k, row) in record.placement.iter().enumerate() {

@@ -35,7 +35,7 @@ pub(super) fn timeline(set: &SetRecord) -> Markup {
                 }
             }
             rect x=(LEFT) y=(LINE_Y - 4.0) width=(WIDTH - 2.0 * LEFT) height="8" rx="4" fill="url(#sides)" stroke="#1c2226" stroke-width="0.75" {}
-            @for (at, text, anchor) in [(0.0, "tau 0 · side A outside", "start"), (0.5, "0.5 · halfway", "middle"), (1.0, "side B outside · 1", "end")] {
+            @for (at, text, anchor) in [(0.0, "tau 0: side A outside", "start"), (0.5, "0.5: halfway", "middle"), (1.0, "1: side B outside", "end")] {
                 text x=(x(at) + (at - 0.5) * 20.0) y=(LINE_Y + 32.0) text-anchor=(anchor) .axis { (text) }
                 line x1=(x(at)) x2=(x(at)) y1=(LINE_Y + 5.0) y2=(LINE_Y + 12.0) stroke="#1c2226" {}
             }
