@@ -5,19 +5,19 @@
 //! samples belong to the exact skin, not to its triangulation.
 //!
 //! # Source
-//! Closest point on a parametric surface by Gauss-Newton: A. Björck, "Numerical Methods for Least Squares
-//! Problems", 1996, section 9.2; the rate is distance times curvature, below 1 while wall/2 is below the
-//! radius of curvature.
+//! Closest point on a parametric surface by a Newton method: A. Björck, "Numerical Methods for Least Squares
+//! Problems", 1996, section 9.2. The second derivatives are not evaluated: the normals at a triangle's
+//! corners tell how the surface bends there.
 
 use super::{Field, LocalField, Sample};
 use crate::geom::{Aabb, Surface, Vec3, closest_point_on_triangle, tangent_frame};
 use crate::mesh::{Side, SkinMesh};
 
-/// Iterations of the polish; each gains about a factor (radius of curvature) / (wall / 2).
+/// Iterations of the polish; each gains about a factor 30 (see [`Bend`]).
 const POLISH_STEPS: usize = 8;
-/// The polish stops when its tangential step is below this, mm: a step of s changes the distance by less
-/// than s^2 / wall.
-const POLISH_STEP_MM: f64 = 3e-4;
+/// The polish stops when its tangential step is below this, mm: what is left of it then changes the distance
+/// by less than 1e-5 mm.
+const POLISH_STEP_MM: f64 = 0.02;
 /// Two feet within the chord error of each other belong to different sheets when the directions to them
 /// differ by more than this cosine.
 const SHEET_COSINE: f64 = 0.985;
@@ -44,8 +44,8 @@ pub struct SheetField<'s> {
     corners: Vec<[Vec3; 3]>,
     normals: Vec<[Vec3; 3]>,
     parameters: Vec<[Vec3; 3]>,
-    /// Centroid (a point of the triangle) and the radius of a ball around it that holds the triangle.
-    balls: Vec<[f32; 4]>,
+    bends: Vec<Bend>,
+    discs: Vec<Disc>,
     bounds: Aabb,
 }
 
@@ -70,17 +70,18 @@ impl<'s> SheetField<'s> {
         }
         let pick = |list: &[Vec3], t: &[u32; 3]| t.map(|i| list[i as usize]);
         let corners: Vec<_> = skin.triangles.iter().map(|t| pick(&skin.positions, t)).collect();
-        let normals = skin.triangles.iter().map(|t| pick(&skin.normals, t)).collect();
+        let normals: Vec<_> = skin.triangles.iter().map(|t| pick(&skin.normals, t)).collect();
         let exact = surface.filter(|_| !skin.parameters.is_empty());
         let parameters = match exact {
             Some(_) => skin.triangles.iter().map(|t| pick(&skin.parameters, t)).collect(),
             None => Vec::new(),
         };
-        let balls = corners.iter().map(ball).collect();
+        let discs = corners.iter().map(Disc::around).collect();
+        let bends = corners.iter().zip(&normals).map(|(c, n)| Bend::of(c, n)).collect();
         let half_wall = 0.5 * wall_mm;
         let chord = if exact.is_some() { skin.chord_mm } else { 0.0 };
         let bounds = Aabb::around(&skin.positions).grown(half_wall + chord);
-        Ok(Self { surface: exact, half_wall, chord, corners, normals, parameters, balls, bounds })
+        Ok(Self { surface: exact, half_wall, chord, corners, normals, parameters, bends, discs, bounds })
     }
 
     /// The nearest point of triangle `t` to `p`, and its distance.
@@ -107,12 +108,20 @@ impl<'s> SheetField<'s> {
             let det = a * c - b * b;
             let (g1, g2) = (r.dot(&j.d1), r.dot(&j.d2));
             let (s1, s2) = ((c * g1 - b * g2) / det, (a * g2 - b * g1) / det);
-            let step = j.d1 * s1 + j.d2 * s2;
+            let rough = j.d1 * s1 + j.d2 * s2;
+            // The tangential offset, corrected for the turn of the normal on the way to the foot.
+            let normal = j.d1.cross(&j.d2);
+            let height = (r - rough).norm().copysign(r.dot(&normal));
+            let (step, sag) = self.bends[t as usize].corrected(&rough, height);
             if step.norm_squared() < POLISH_STEP_MM * POLISH_STEP_MM {
-                return oriented(r - step, &j.d1.cross(&j.d2));
+                // At the foot the surface has left its tangent plane by the sag.
+                let offset = r - step + normal * (sag / normal.norm());
+                return oriented(offset, &normal);
             }
+            let (g1, g2) = (step.dot(&j.d1), step.dot(&j.d2));
+            let (s1, s2) = ((c * g1 - b * g2) / det, (a * g2 - b * g1) / det);
             // A step of more than half the distance to the antipode would leave the chart.
-            let limit = (0.5 / s1.hypot(s2)).min(1.0);
+            let limit = (0.25 / (s1 * s1 + s2 * s2)).sqrt().min(1.0);
             u = (u + (e1 * s1 + e2 * s2) * limit).normalize();
         }
         let (e1, e2) = tangent_frame(&u);
@@ -124,6 +133,49 @@ impl<'s> SheetField<'s> {
     }
 }
 
+/// How the surface bends over a triangle: the change of its unit normal with the place, in a basis of the
+/// triangle's plane, from the normals at the corners.
+struct Bend {
+    basis: [Vec3; 2],
+    /// Symmetric: xx, xy, yy, 1/mm.
+    turn: [f64; 3],
+}
+
+impl Bend {
+    fn of(corners: &[Vec3; 3], normals: &[Vec3; 3]) -> Self {
+        let (e, f) = (corners[1] - corners[0], corners[2] - corners[0]);
+        let u = e.normalize();
+        let v = e.cross(&f).cross(&e).normalize();
+        let flat = |x: &Vec3| [x.dot(&u), x.dot(&v)];
+        let (e, f) = (flat(&e), flat(&f));
+        let (m, n) = (flat(&(normals[1] - normals[0])), flat(&(normals[2] - normals[0])));
+        let det = e[0] * f[1] - e[1] * f[0];
+        let entry = |k: usize| [(m[k] * f[1] - n[k] * e[1]) / det, (n[k] * e[0] - m[k] * f[0]) / det];
+        let (top, bottom) = (entry(0), entry(1));
+        let turn = [top[0], 0.5 * (top[1] + bottom[0]), bottom[1]];
+        // A needle tells nothing; no bend makes the polish plain Gauss-Newton.
+        let sound = turn.iter().all(|t| t.is_finite());
+        Self { basis: [u, v], turn: if sound { turn } else { [0.0; 3] } }
+    }
+
+    /// The step to the foot for a tangential offset seen from `height` above the surface (negative below),
+    /// and how far the surface bends away from the tangent plane over that step, mm.
+    fn corrected(&self, rough: &Vec3, height: f64) -> (Vec3, f64) {
+        let [u, v] = &self.basis;
+        let (x, y) = (rough.dot(u), rough.dot(v));
+        let [a, b, c] = self.turn;
+        let (p, q, r) = (1.0 + height * a, height * b, 1.0 + height * c);
+        let det = p * r - q * q;
+        // Near a focal point the correction means nothing.
+        if det < 0.1 {
+            return (*rough, 0.0);
+        }
+        let (sx, sy) = ((r * x - q * y) / det, (p * y - q * x) / det);
+        let off = rough - u * x - v * y;
+        (u * sx + v * sy + off, 0.5 * (a * sx * sx + 2.0 * b * sx * sy + c * sy * sy))
+    }
+}
+
 /// Splits an offset from the skin into distance, unit direction and side.
 fn oriented(offset: Vec3, normal: &Vec3) -> (f64, Vec3, Side) {
     let d = offset.norm();
@@ -132,12 +184,53 @@ fn oriented(offset: Vec3, normal: &Vec3) -> (f64, Vec3, Side) {
     (d, direction, if up { Side::A } else { Side::B })
 }
 
-#[expect(clippy::cast_possible_truncation, reason = "rounded once; the radius is widened to cover it")]
-fn ball(corners: &[Vec3; 3]) -> [f32; 4] {
-    let c = (corners[0] + corners[1] + corners[2]) / 3.0;
-    let r = corners.iter().map(|q| (q - c).norm()).fold(0.0, f64::max);
-    let slack = 4.0 * f64::from(f32::EPSILON) * (c.amax() + r);
-    [c.x as f32, c.y as f32, c.z as f32, (r + slack) as f32]
+/// A flat disc that holds a triangle: for quick lower bounds of the distance.
+#[derive(Clone, Copy)]
+struct Disc {
+    /// The centroid, a point of the triangle.
+    centre: [f32; 3],
+    radius: f32,
+    /// Unit normal.
+    normal: [f32; 3],
+}
+
+impl Disc {
+    #[expect(clippy::cast_possible_truncation, reason = "the radius is widened to cover the rounding")]
+    fn around(corners: &[Vec3; 3]) -> Self {
+        let c = (corners[0] + corners[1] + corners[2]) / 3.0;
+        let r = corners.iter().map(|q| (q - c).norm()).fold(0.0, f64::max);
+        let slack = 4.0 * f64::from(f32::EPSILON) * (c.amax() + r);
+        let n = (corners[1] - corners[0]).cross(&(corners[2] - corners[0])).normalize();
+        // A triangle without area lies in every plane through it; a zero normal makes the disc a ball.
+        let n = if n.iter().all(|x| x.is_finite()) { n } else { Vec3::zeros() };
+        Self { centre: single(&c), radius: (r + slack) as f32, normal: [n.x as f32, n.y as f32, n.z as f32] }
+    }
+
+    /// Squared distance from a point to the centre, and its height over the plane.
+    fn seen_from(&self, p: [f32; 3]) -> (f32, f32) {
+        let [x, y, z] = [0, 1, 2].map(|k| p[k] - self.centre[k]);
+        let n = &self.normal;
+        (x * x + y * y + z * z, x * n[0] + y * n[1] + z * n[2])
+    }
+
+    /// A lower bound of the distance from a point to the triangle, but for rounding ([`SLACK`]).
+    fn at_least(&self, p: [f32; 3]) -> f32 {
+        let (g2, h) = self.seen_from(p);
+        let beside = ((g2 - h * h).max(0.0).sqrt() - self.radius).max(0.0);
+        (h * h + beside * beside).sqrt()
+    }
+
+    /// Whether the bound is at most `reach`.
+    fn within(&self, p: [f32; 3], reach: f32) -> bool {
+        let (g2, h) = self.seen_from(p);
+        let h2 = h * h;
+        let room = reach * reach - h2;
+        if room < 0.0 {
+            return false;
+        }
+        let r = self.radius + room.sqrt();
+        g2 - h2 <= r * r
+    }
 }
 
 impl Field for SheetField<'_> {
@@ -146,13 +239,12 @@ impl Field for SheetField<'_> {
     }
 
     fn within(&self, region: &Aabb) -> Box<dyn LocalField<'_> + '_> {
-        let ids = 0..u32::try_from(self.balls.len()).unwrap_or(u32::MAX);
+        let ids = 0..u32::try_from(self.discs.len()).unwrap_or(u32::MAX);
         Box::new(SheetNear::pruned(self, ids, region))
     }
 
     fn accuracy_mm(&self) -> f64 {
-        // s^2 / wall for the last step of the polish, and as much again for its curvature.
-        if self.surface.is_some() { POLISH_STEP_MM * POLISH_STEP_MM / self.half_wall } else { 1e-9 }
+        if self.surface.is_some() { 1e-5 } else { 1e-9 }
     }
 }
 
@@ -160,71 +252,82 @@ impl Field for SheetField<'_> {
 struct SheetNear<'f> {
     field: &'f SheetField<'f>,
     ids: Vec<u32>,
-    balls: Vec<[f32; 4]>,
+    discs: Vec<Disc>,
+    /// For a short list, ascending: lower bounds of the distances from `centre`; empty for a long one.
+    bounds: Vec<f32>,
+    centre: [f32; 3],
 }
 
-fn gap(b: &[f32; 4], c: [f32; 3]) -> f32 {
-    let (x, y, z) = (b[0] - c[0], b[1] - c[1], b[2] - c[2]);
-    (x * x + y * y + z * z).sqrt()
-}
-
-#[expect(clippy::cast_possible_truncation, reason = "a reach computed in f32 and widened by its rounding")]
+#[expect(clippy::cast_possible_truncation, reason = "bounds from it are widened by the rounding")]
 fn single(p: &Vec3) -> [f32; 3] {
     [p.x as f32, p.y as f32, p.z as f32]
 }
 
+/// A length in f32, widened by the rounding of the discs.
+#[expect(clippy::cast_possible_truncation, reason = "widened by more than its rounding")]
+fn wider(reach: f64) -> f32 {
+    reach as f32 + SLACK
+}
+
+/// A list shorter than this is ordered by distance from the middle of its region.
+const SHORT: usize = 128;
 /// f32 rounding of distances up to a few hundred mm, with room.
 const SLACK: f32 = 2e-4;
 
 impl<'f> SheetNear<'f> {
-    #[expect(
-        clippy::cast_possible_truncation,
-        reason = "a reach computed in f32 and widened by its rounding"
-    )]
-    fn pruned(field: &'f SheetField<'f>, ids: impl Iterator<Item = u32> + Clone, region: &Aabb) -> Self {
-        let c = single(&region.centre());
-        let reach = region.extent().norm() as f32 + 2.0 * field.chord as f32 + SLACK;
-        let gaps: Vec<f32> = ids.clone().map(|i| gap(&field.balls[i as usize], c)).collect();
-        let limit = gaps.iter().copied().fold(f32::INFINITY, f32::min) + reach;
-        let near = |(i, g): (u32, &f32)| (g - field.balls[i as usize][3] <= limit).then_some(i);
-        let mut kept: Vec<u32> = ids.zip(&gaps).filter_map(near).collect();
-        // Few left: the exact distances to the middle prune what the balls could not.
-        if kept.len() < 400 && kept.len() > 4 {
-            let m = region.centre();
-            let d: Vec<f64> = kept.iter().map(|&t| field.flat(t, &m).2).collect();
-            let limit = d.iter().copied().fold(f64::INFINITY, f64::min) + f64::from(reach);
-            let mut k = 0;
-            kept.retain(|_| {
-                k += 1;
-                d[k - 1] <= limit
-            });
+    fn pruned(field: &'f SheetField<'f>, ids: impl Iterator<Item = u32>, region: &Aabb) -> Self {
+        let (middle, centre) = (region.centre(), single(&region.centre()));
+        let mut order: Vec<(f32, u32)> = ids.map(|i| (field.discs[i as usize].at_least(centre), i)).collect();
+        // The distance to the triangle with the least bound is an upper bound for the nearest.
+        let first = order.iter().min_by(|a, b| a.0.total_cmp(&b.0)).map_or(0, |o| o.1);
+        let nearest = field.flat(first, &middle).2;
+        let limit = wider(nearest + region.extent().norm() + 2.0 * field.chord);
+        order.retain(|o| o.0 <= limit);
+        // Ordering a long list costs more than it saves: it will be narrowed again before it is asked much.
+        let ordered = order.len() < SHORT;
+        if ordered {
+            order.sort_unstable_by(|a, b| a.0.total_cmp(&b.0).then(a.1.cmp(&b.1)));
         }
-        let balls = kept.iter().map(|&i| field.balls[i as usize]).collect();
-        Self { field, ids: kept, balls }
+        let ids: Vec<u32> = order.iter().map(|o| o.1).collect();
+        let discs = ids.iter().map(|&i| field.discs[i as usize]).collect();
+        Self {
+            field,
+            ids,
+            discs,
+            bounds: if ordered { order.iter().map(|o| o.0).collect() } else { Vec::new() },
+            centre,
+        }
     }
 
     /// The nearest triangle: number, barycentric foot, distance.
     fn nearest(&self, p: &Vec3) -> (u32, [f64; 3], f64) {
-        let c = single(p);
-        let mut first = (f32::INFINITY, 0);
-        for (k, b) in self.balls.iter().enumerate() {
-            let g = gap(b, c);
-            if g < first.0 {
-                first = (g, k);
+        let (w, _, d) = self.field.flat(self.ids[0], p);
+        let mut best = (self.ids[0], w, d);
+        self.visit(p, d, |k, reach| {
+            let (w, _, d) = self.field.flat(self.ids[k], p);
+            // Ties go to the lower number, so that every region gives the same answer.
+            if d < best.2 || (d <= best.2 && self.ids[k] < best.0) {
+                best = (self.ids[k], w, d);
             }
-        }
-        let (w, _, d) = self.field.flat(self.ids[first.1], p);
-        let mut best = (self.ids[first.1], w, d);
-        for (k, b) in self.balls.iter().enumerate() {
-            if f64::from(gap(b, c) - b[3] - SLACK) < best.2 && k != first.1 {
-                let (w, _, d) = self.field.flat(self.ids[k], p);
-                // Ties go to the lower number, so that every region gives the same answer.
-                if d < best.2 || (d <= best.2 && self.ids[k] < best.0) {
-                    best = (self.ids[k], w, d);
-                }
-            }
-        }
+            *reach = best.2;
+        });
         best
+    }
+
+    /// Calls `f` with every triangle of the list that can be within `reach` of `p`; `f` may lower it.
+    fn visit(&self, p: &Vec3, mut reach: f64, mut f: impl FnMut(usize, &mut f64)) {
+        let c = single(p);
+        let off: f32 = (0..3).map(|k| (c[k] - self.centre[k]).powi(2)).sum::<f32>().sqrt() + SLACK;
+        let mut wide = wider(reach);
+        for (k, disc) in self.discs.iter().enumerate() {
+            if self.bounds.get(k).is_some_and(|b| b - off > wide) {
+                break;
+            }
+            if disc.within(c, wide) {
+                f(k, &mut reach);
+                wide = wider(reach);
+            }
+        }
     }
 
     /// The nearest sheet on the exact skin. The nearest triangle may belong to another sheet that is
@@ -234,26 +337,24 @@ impl<'f> SheetNear<'f> {
         let (t, w, d) = self.nearest(p);
         let (mut best, mut piece) = (f.polished(t, w, p), t);
         if f.chord > 0.0 {
-            let c = single(p);
             let reach = d + 2.0 * f.chord;
-            let mut directions = vec![best.1];
-            for (k, b) in self.balls.iter().enumerate() {
-                if f64::from(gap(b, c) - b[3] - SLACK) > reach {
-                    continue;
-                }
+            let mut directions = [best.1; 4];
+            let mut sheets = 1;
+            self.visit(p, reach, |k, _| {
                 let (w, q, d) = f.flat(self.ids[k], p);
-                if d > reach || d < 1e-9 {
-                    continue;
+                if d > reach || d < 1e-9 || sheets == directions.len() {
+                    return;
                 }
                 let direction = (p - q) / d;
-                if directions.iter().all(|o| o.dot(&direction) < SHEET_COSINE) {
+                if directions[..sheets].iter().all(|o| o.dot(&direction) < SHEET_COSINE) {
                     let other = f.polished(self.ids[k], w, p);
-                    directions.push(direction);
+                    directions[sheets] = direction;
+                    sheets += 1;
                     if other.0 < best.0 {
                         (best, piece) = (other, self.ids[k]);
                     }
                 }
-            }
+            });
         }
         Sample { value: best.0 - f.half_wall, gradient: best.1, side: best.2, piece }
     }
@@ -265,16 +366,18 @@ impl<'f> LocalField<'f> for SheetNear<'f> {
     }
 
     fn range(&self, region: &Aabb) -> (f64, f64) {
-        let c = single(&region.centre());
-        let (mut low, mut high) = (f32::INFINITY, f32::INFINITY);
-        for b in &self.balls {
-            let g = gap(b, c);
-            low = low.min(g - b[3]);
-            high = high.min(g);
+        let (middle, c) = (region.centre(), single(&region.centre()));
+        let (mut low, mut first) = (f32::INFINITY, 0);
+        for (k, d) in self.discs.iter().enumerate() {
+            let bound = d.at_least(c);
+            if bound < low {
+                (low, first) = (bound, k);
+            }
         }
+        let high = self.field.flat(self.ids[first], &middle).2;
         let r = 0.5 * region.extent().norm() + self.field.chord + f64::from(SLACK);
         let a = self.field.half_wall;
-        (f64::from(low).max(0.0) - r - a, f64::from(high) + r - a)
+        (f64::from(low) - r - a, high + r - a)
     }
 
     fn value(&self, p: &Vec3) -> f64 {
@@ -288,16 +391,13 @@ impl<'f> LocalField<'f> for SheetNear<'f> {
 
     fn facing(&self, p: &Vec3, gradient: &Vec3) -> f64 {
         let mut best = f64::INFINITY;
-        let c = single(p);
-        for (b, &t) in self.balls.iter().zip(&self.ids) {
-            if f64::from(gap(b, c) - b[3] - SLACK) >= best {
-                continue;
-            }
-            let (_, q, d) = self.field.flat(t, p);
+        self.visit(p, f64::INFINITY, |k, reach| {
+            let (_, q, d) = self.field.flat(self.ids[k], p);
             if d < best && (p - q).dot(gradient) < -0.5 * d {
                 best = d;
+                *reach = d;
             }
-        }
+        });
         best - self.field.half_wall
     }
 

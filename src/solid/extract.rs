@@ -107,7 +107,7 @@ pub(super) fn extract(lattice: &Lattice<'_>) -> TriMesh {
     mesh
 }
 
-fn block_vertices(lattice: &Lattice<'_>, block: &Block<'_>) -> BlockVertices {
+fn block_vertices<'f>(lattice: &Lattice<'f>, block: &Block<'f>) -> BlockVertices {
     let mut out = BlockVertices {
         bits: [0; 24],
         rank: [0; 24],
@@ -145,22 +145,22 @@ fn block_vertices(lattice: &Lattice<'_>, block: &Block<'_>) -> BlockVertices {
     if total == 0 {
         return out;
     }
-    // The field narrowed to each eighth of the block, made when first needed.
+    // The field narrowed to each eighth of the block made when first needed.
     let corner = block.at.map(|b| b * BLOCK);
-    let mut eighths: [Option<Box<dyn LocalField<'_> + '_>>; 8] = Default::default();
+    let part = |near: &dyn LocalField<'f>, low: [i32; 3], n: i32| {
+        let a = add(corner, low);
+        near.narrowed(&Aabb { min: lattice.node(a), max: lattice.node(a.map(|c| c + n)) })
+    };
+    let mut eighths: [Option<Box<dyn LocalField<'f> + 'f>>; 8] = Default::default();
     for axis in 0..3 {
         for l in locals() {
             let bit = 512 * axis + node_index(l);
             if out.bits[bit / 64] >> (bit % 64) & 1 == 0 {
                 continue;
             }
-            let low = l.map(|c| c / 4);
-            let slot = (low[0] + 2 * low[1] + 4 * low[2]).unsigned_abs() as usize;
-            let near = eighths[slot].get_or_insert_with(|| {
-                let a = add(corner, low.map(|c| 4 * c));
-                let region = Aabb { min: lattice.node(a), max: lattice.node(a.map(|c| c + 4)) };
-                block.near.narrowed(&region)
-            });
+            let big = l.map(|c| c / 4);
+            let near = eighths[(big[0] + 2 * big[1] + 4 * big[2]).unsigned_abs() as usize]
+                .get_or_insert_with(|| part(block.near.as_ref(), big.map(|c| 4 * c), 4));
             let m = step(l, axis);
             let ends = [(l, value(l)), (m, value(m))];
             let [(inside, vi), (outside, vo)] = if ends[0].1 > 0.0 { [ends[1], ends[0]] } else { ends };
