@@ -12,8 +12,8 @@ use stagewright::solid::{GridSettings, solidify};
 use std::io::{BufWriter, Write};
 use std::time::Instant;
 
-/// Chord bound of our skin, mm: a quarter of the default tolerance, as the program takes it.
-const CHORD_MM: f64 = 0.0125;
+/// Chord bound of our skin as a share of the grid, as the pipeline takes it.
+const CHORD_OF_GRID: f64 = 0.1;
 /// Shells below this volume are filled or dropped, mm3: the cube of mex-pla's smallest feature, as the program does.
 const CRUMB_MM3: f64 = 8.0;
 
@@ -119,7 +119,7 @@ fn ours(order: u32, tau: f64, wall_mm: f64, grid_mm: f64) -> Result<()> {
     let (stage, placement) = placed_stage(order, tau, wall_mm)?;
     let placed = Placed::new(stage.as_ref(), placement);
     let before = cpu_seconds()?;
-    let skin = sample(&placed, CHORD_MM, 10_000_000)?;
+    let skin = sample(&placed, CHORD_OF_GRID * grid_mm, 10_000_000)?;
     let cpu0 = cpu_seconds()?;
     let start = Instant::now();
     let field = SheetField::new(&skin, Some(&placed), wall_mm)?;
@@ -139,7 +139,7 @@ fn ours(order: u32, tau: f64, wall_mm: f64, grid_mm: f64) -> Result<()> {
     Ok(())
 }
 
-/// `ours ORDER TAU GRID THREADS`, `skin-fine ORDER TAU FILE`, `skin-same ORDER TAU FILE`.
+/// `ours ORDER TAU GRID THREADS`, `skin-fine ORDER TAU GRID FILE`, `skin-same ORDER TAU GRID FILE`.
 pub(crate) fn child(args: &[String], wall_mm: f64) -> Result<()> {
     let args: Vec<&str> = args.iter().map(String::as_str).collect();
     match args[..] {
@@ -148,15 +148,16 @@ pub(crate) fn child(args: &[String], wall_mm: f64) -> Result<()> {
             let pool = rayon::ThreadPoolBuilder::new().num_threads(threads.parse()?).build()?;
             pool.install(|| ours(order, tau, wall_mm, grid))
         }
-        ["skin-fine", order, tau, path] => {
+        ["skin-fine", order, tau, _grid, path] => {
             let (stage, placement) = placed_stage(order.parse()?, tau.parse()?, wall_mm)?;
             let (points, triangles) = icosphere(FINE_PIECES);
             let positions: Vec<Vec3> = points.iter().map(|p| placement.point(&stage.position(*p))).collect();
             write_skin(path, &positions, &triangles)
         }
-        ["skin-same", order, tau, path] => {
+        ["skin-same", order, tau, grid, path] => {
             let (stage, placement) = placed_stage(order.parse()?, tau.parse()?, wall_mm)?;
-            let skin = sample(&Placed::new(stage.as_ref(), placement), CHORD_MM, 10_000_000)?;
+            let chord = CHORD_OF_GRID * grid.parse::<f64>()?;
+            let skin = sample(&Placed::new(stage.as_ref(), placement), chord, 10_000_000)?;
             write_skin(path, &skin.positions, &skin.triangles)
         }
         _ => bail!("unknown child arguments {args:?}"),

@@ -180,23 +180,25 @@ fn bench(o: &Options) -> Result<()> {
             });
         }
         if let Some(rival) = &rival {
-            for what in ["fine", "same"] {
-                let skin = folder.join(format!("skin-{order}-{tau}-{what}.tri"));
-                let mut c = Command::new(&me);
-                c.args(["--child", &format!("skin-{what}")]).args(&stage).arg(&skin);
-                let output = c.output()?;
-                ensure!(output.status.success(), "no skin: {}", String::from_utf8_lossy(&output.stderr));
-                for &threads in if what == "fine" { ["1", "2"].as_slice() } else { &["1"] } {
-                    let skin = skin.clone();
-                    contenders.push(Contender {
-                        name: format!("rival, {what} skin, {threads} threads"),
-                        command: Box::new(move |h| {
-                            let mut c = Command::new(rival);
-                            c.arg(&skin).args([&h.to_string(), &WALL_MM.to_string(), threads]);
-                            c
-                        }),
-                    });
+            for (what, threads) in [("fine", "1"), ("fine", "2"), ("same", "1")] {
+                let mut skins = Vec::new();
+                for &h in &o.grids {
+                    let skin = folder.join(format!("skin-{order}-{tau}-{what}-{h}.tri"));
+                    let mut c = Command::new(&me);
+                    c.args(["--child", &format!("skin-{what}")]).args(&stage).arg(h.to_string()).arg(&skin);
+                    let output = c.output()?;
+                    ensure!(output.status.success(), "no skin: {}", String::from_utf8_lossy(&output.stderr));
+                    skins.push((h, skin));
                 }
+                contenders.push(Contender {
+                    name: format!("rival, {what} skin, {threads} threads"),
+                    command: Box::new(move |h| {
+                        let mut c = Command::new(rival);
+                        c.args(skins.iter().filter(|s| s.0.total_cmp(&h).is_eq()).map(|s| &s.1));
+                        c.args([&h.to_string(), &WALL_MM.to_string(), threads]);
+                        c
+                    }),
+                });
             }
         }
         table(&contenders, o)?;
