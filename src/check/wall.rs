@@ -47,7 +47,8 @@ fn edges(edge: &WallPlace, figures: &WallFigures, limit: f64) -> Finding {
             edge.thickness_mm,
             Unit::Mm,
             format!(
-                "Edges and teeth thinner than {} that stand on thicker material take {:.2} % of the surface, the                  thinnest {:.4} mm; they are not counted as walls and print blunt or not at all.",
+                "Edges and teeth thinner than {} that stand on thicker material take {:.2} % of the surface, the \
+                 thinnest {:.4} mm; they are not counted as walls and print blunt or not at all.",
                 Quantity::new(limit, Unit::Mm),
                 100.0 * figures.edge_share,
                 edge.thickness_mm
