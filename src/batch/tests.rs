@@ -257,7 +257,12 @@ fn a_failed_stage_does_not_stop_the_others_and_is_the_worst_outcome() {
     assert_eq!(outcome.worst(), Worst::NotMade);
     assert!(dir.path().join("02-tau-0.410.stl").is_file());
     assert_eq!(outcome.record.failures.len(), 1);
-    assert!(fs::read_to_string(dir.path().join("set.json")).unwrap().contains("stage 1"));
+    let why = GridError::Empty(1.0).to_string();
+    let StageResult::NotMade(said) = &outcome.stages[0].result else { panic!("{outcome:?}") };
+    assert_eq!(said, &why);
+    let json: serde_json::Value =
+        serde_json::from_slice(&fs::read(dir.path().join("set.json")).unwrap()).unwrap();
+    assert!(json["failures"][0].to_string().contains(&why), "{json:#}");
     let caution = Tetrahedra { caution: true, ..Default::default() };
     let outcome = made_with(&caution, &job(), &dir.path().join("other")).unwrap();
     assert_eq!(outcome.worst(), Worst::MadeWithCautions);

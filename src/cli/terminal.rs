@@ -89,6 +89,9 @@ pub(super) fn table<const N: usize>(head: [&str; N], right: &[usize], rows: Vec<
     for row in rows {
         table.add_row(row);
     }
+    if let Some(column) = table.column_mut(0) {
+        column.set_padding((0, 1));
+    }
     for &i in right {
         if let Some(column) = table.column_mut(i) {
             column.set_cell_alignment(CellAlignment::Right);
@@ -141,7 +144,10 @@ mod tests {
         );
         let lines: Vec<&str> = text.lines().collect();
         assert_eq!(lines.len(), 4, "{text}");
-        assert!(lines[2].ends_with(" 7.5 g") && lines[3].ends_with("10.5 g"), "{text}");
+        assert!(
+            lines[2].starts_with('1') && lines[2].ends_with(" 7.5 g") && lines[3].ends_with("10.5 g"),
+            "{text}"
+        );
         assert_eq!(lines[2].len(), lines[3].len());
     }
 }

@@ -1,8 +1,10 @@
 //! One readable function from a job and a time to a finished stage.
 
+mod inspect;
 mod layout;
 mod plan;
 
+pub use inspect::inspect;
 pub use layout::{LaidOut, Layout, LayoutError, grid_mm, layout};
 pub use plan::{Plan, PlanError, StagePlan, plan};
 
@@ -215,13 +217,19 @@ pub fn make_stage(
 pub fn audit_figures(audit: &Audit) -> AuditFigures {
     let fault = |kinds: &[FaultKind]| {
         let count = kinds.iter().map(|&k| audit.count(k)).sum();
-        let place = audit.faults.iter().find(|f| kinds.contains(&f.kind)).map(|f| f.place_mm);
-        Fault::new(count, place)
+        let first = audit.faults.iter().find(|f| kinds.contains(&f.kind));
+        // A triangle without a finite corner has no place.
+        let placed = first.filter(|f| !matches!(f.kind, FaultKind::IndexOutOfRange | FaultKind::NotFinite));
+        Fault::new(count, placed.map(|f| f.place_mm))
     };
     AuditFigures {
-        bad_triangles: fault(&[FaultKind::IndexOutOfRange, FaultKind::NotFinite, FaultKind::RepeatedCorner]),
-        flat_triangles: fault(&[FaultKind::ZeroArea]),
-        doubled_triangles: fault(&[FaultKind::DuplicateTriangle]),
+        bad_triangles: fault(&[
+            FaultKind::IndexOutOfRange,
+            FaultKind::NotFinite,
+            FaultKind::RepeatedCorner,
+            FaultKind::ZeroArea,
+            FaultKind::DuplicateTriangle,
+        ]),
         open_edges: fault(&[FaultKind::OpenEdge]),
         crowded_edges: fault(&[FaultKind::CrowdedEdge]),
         pinched_vertices: fault(&[FaultKind::PinchedVertex]),
