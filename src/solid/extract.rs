@@ -4,6 +4,11 @@
 //! where smooth pieces of the boundary meet in an edge or a corner; triangles from the loops of
 //! [`super::cube`].
 //!
+//! Between two walls the edge often runs just beyond the last cell the nodes see, in a cell whose corners
+//! are all alike. Then the inner vertex sits in that cell: the disc is a cone from a point inside the box
+//! of the two cells over a curve on the box's boundary (the face between them carries no segment), so it is
+//! embedded as before. A cell is lent to one neighbour only.
+//!
 //! Along such an edge, two neighbouring cells with inner vertices F and G share a segment pq on their
 //! common face; the two triangles at pq are turned into the two at FG. This keeps the mesh embedded when
 //! FG pierces the face: inside each cell the disc is still a cone from its inner point over a simple
@@ -21,6 +26,7 @@ use crate::field::LocalField;
 use crate::geom::{Aabb, Vec3};
 use crate::mesh::{Side, TriMesh};
 use rayon::prelude::*;
+use rustc_hash::FxHashSet;
 
 /// Roots stay this share of an edge away from its ends, so that rounding cannot reach a node.
 const EDGE_MARGIN: f64 = 1e-3;
@@ -43,6 +49,15 @@ struct Crossing {
     side: Side,
 }
 
+/// A vertex inside a cell, or inside the cell it has borrowed.
+#[derive(Clone, Copy)]
+struct Inner {
+    cell: u16,
+    at: [f32; 3],
+    /// The face across which the borrowed cell lies.
+    borrowed: Option<u8>,
+}
+
 /// The vertices of one block.
 struct BlockVertices {
     /// Bit 512 axis + node: the edge from that node along that axis is crossed.
@@ -55,7 +70,7 @@ struct BlockVertices {
     /// Cells the surface passes, with their patterns, in order of the cell.
     cells: Vec<(u16, u8)>,
     /// Inner vertices by cell.
-    inner: Vec<(u16, [f32; 3])>,
+    inner: Vec<Inner>,
     inner_base: u32,
 }
 
@@ -68,13 +83,14 @@ pub(super) fn extract(lattice: &Lattice<'_>) -> TriMesh {
         b.base = next;
         next += u32::try_from(b.crossings.len()).unwrap_or(0);
     }
-    let inner: Vec<Vec<(u16, [f32; 3])>> = (0..blocks.len())
+    let mut inner: Vec<Vec<Inner>> = (0..blocks.len())
         .into_par_iter()
         .map(|n| {
             let view = View { lattice, blocks: &blocks, n };
             view.inner_vertices()
         })
         .collect();
+    lend_once(lattice, &mut inner);
     for (b, inner) in blocks.iter_mut().zip(inner) {
         b.inner_base = next;
         next += u32::try_from(inner.len()).unwrap_or(0);
@@ -94,7 +110,7 @@ pub(super) fn extract(lattice: &Lattice<'_>) -> TriMesh {
         mesh.positions.extend(b.crossings.iter().map(|c| wide(&c.position)));
     }
     for b in &blocks {
-        mesh.positions.extend(b.inner.iter().map(|(_, p)| wide(p)));
+        mesh.positions.extend(b.inner.iter().map(|i| wide(&i.at)));
     }
     drop(blocks);
     let count = faces.iter().map(Vec::len).sum();
@@ -105,6 +121,24 @@ pub(super) fn extract(lattice: &Lattice<'_>) -> TriMesh {
         mesh.sides.extend(f.iter().map(|(_, s)| *s));
     }
     mesh
+}
+
+/// Leaves out inner vertices whose borrowed cell another has borrowed before, in the order of the blocks.
+fn lend_once(lattice: &Lattice<'_>, inner: &mut [Vec<Inner>]) {
+    let mut lent = FxHashSet::default();
+    for (block, list) in lattice.blocks.iter().zip(inner) {
+        list.retain(|i| {
+            i.borrowed
+                .is_none_or(|face| lent.insert(add(block.at.map(|b| b * BLOCK), across(local(i.cell), face))))
+        });
+    }
+}
+
+/// The cell on the other side of a face.
+fn across(l: [i32; 3], face: u8) -> [i32; 3] {
+    let mut out = l;
+    out[usize::from(face / 2)] += if face % 2 == 1 { 1 } else { -1 };
+    out
 }
 
 fn block_vertices<'f>(lattice: &Lattice<'f>, block: &Block<'f>) -> BlockVertices {
@@ -243,32 +277,39 @@ impl<'v, 'f> View<'v, 'f> {
         Some((b.base + u32::try_from(k).ok()?, b.crossings.get(k)?))
     }
 
-    /// The inner vertex of the cell at `l`.
-    fn inner(&self, l: [i32; 3]) -> Option<(u32, [f32; 3])> {
+    /// The inner vertex of the cell at `l` and its number.
+    fn inner(&self, l: [i32; 3]) -> Option<(u32, Inner)> {
         let (b, l) = self.home(l)?;
-        let k = b.inner.binary_search_by_key(&small(node_index(l)), |(c, _)| *c).ok()?;
-        Some((b.inner_base + u32::try_from(k).ok()?, b.inner[k].1))
+        let k = b.inner.binary_search_by_key(&small(node_index(l)), |i| i.cell).ok()?;
+        Some((b.inner_base + u32::try_from(k).ok()?, b.inner[k]))
+    }
+
+    /// Whether the surface passes the cell at `l`.
+    fn passed(&self, l: [i32; 3]) -> bool {
+        self.home(l)
+            .is_some_and(|(b, l)| b.cells.binary_search_by_key(&small(node_index(l)), |(c, _)| *c).is_ok())
     }
 
     fn around(&self, l: [i32; 3], lp: &Loop) -> Vec<(u32, &Crossing)> {
         lp.edges.iter().filter_map(|&e| self.crossing(l, e)).collect()
     }
 
-    fn inner_vertices(&self) -> Vec<(u16, [f32; 3])> {
+    fn inner_vertices(&self) -> Vec<Inner> {
         let mut out = Vec::new();
         for &(cell, pattern) in &self.blocks[self.n].cells {
             let [only] = loops(pattern) else { continue };
             let l = local(cell);
             let ring = self.around(l, only);
-            if let Some(p) = self.inner_vertex(l, &ring) {
-                out.push((cell, p));
+            if let Some((at, borrowed)) = self.inner_vertex(l, &ring) {
+                out.push(Inner { cell, at, borrowed });
             }
         }
         out
     }
 
-    /// The point inside the cell where two or three pieces of the boundary meet.
-    fn inner_vertex(&self, l: [i32; 3], ring: &[(u32, &Crossing)]) -> Option<[f32; 3]> {
+    /// The point inside the cell, or just across one of its faces, where two or three pieces of the
+    /// boundary meet, and that face.
+    fn inner_vertex(&self, l: [i32; 3], ring: &[(u32, &Crossing)]) -> Option<([f32; 3], Option<u8>)> {
         let normals: Vec<Vec3> = ring.iter().map(|(_, c)| widen(&c.gradient)).collect();
         let mut apart = (EDGE_COSINE, 0, 0);
         for i in 0..normals.len() {
@@ -283,11 +324,11 @@ impl<'v, 'f> View<'v, 'f> {
         if i == j {
             return None;
         }
-        let across = normals[i].cross(&normals[j]).try_normalize(1e-6)?;
+        let along = normals[i].cross(&normals[j]).try_normalize(1e-6)?;
         let third = (0..normals.len())
-            .max_by(|&a, &b| normals[a].dot(&across).abs().total_cmp(&normals[b].dot(&across).abs()))?;
+            .max_by(|&a, &b| normals[a].dot(&along).abs().total_cmp(&normals[b].dot(&along).abs()))?;
         let mut pieces = vec![ring[i].1.piece, ring[j].1.piece];
-        if normals[third].dot(&across).abs() > 0.5 {
+        if normals[third].dot(&along).abs() > 0.5 {
             pieces.push(ring[third].1.piece);
         }
         let mean = ring.iter().map(|(_, c)| widen(&c.position)).sum::<Vec3>() / real(ring.len());
@@ -298,11 +339,25 @@ impl<'v, 'f> View<'v, 'f> {
             meet(self.block().near.as_ref(), &pieces, mean, h)
         })?;
         let r = narrow(&found);
-        let inside = (0..3).all(|k| {
+        let mut borrowed = None;
+        for (face, k) in (0u8..).step_by(2).zip(0..3) {
             let x = (f64::from(r[k]) - low[k]) / h;
-            x > INNER_MARGIN && x < 1.0 - INNER_MARGIN
-        });
-        inside.then_some(r)
+            let beyond = if x < 0.0 { Some((face, -x)) } else { (x > 1.0).then_some((face + 1, x - 1.0)) };
+            let depth = match beyond {
+                None => x.min(1.0 - x),
+                Some((face, depth)) => {
+                    if borrowed.replace(face).is_some() {
+                        return None;
+                    }
+                    depth.min(1.0 - depth)
+                }
+            };
+            if depth < INNER_MARGIN {
+                return None;
+            }
+        }
+        let free = borrowed.is_none_or(|face| !self.passed(across(l, face)));
+        free.then_some((r, borrowed))
     }
 
     fn triangles(&self) -> Vec<([u32; 3], Side)> {
@@ -326,19 +381,19 @@ impl<'v, 'f> View<'v, 'f> {
         pattern: u8,
         lp: &Loop,
         ring: &[(u32, &Crossing)],
-        (f, at): (u32, [f32; 3]),
+        (f, inner): (u32, Inner),
         out: &mut Vec<([u32; 3], Side)>,
     ) {
         for k in 0..ring.len() {
             let (p, q) = (&ring[k], &ring[(k + 1) % ring.len()]);
-            match self.flip(l, pattern, lp.faces[k], [p.1, q.1], at) {
+            match self.flip(l, pattern, lp.faces[k], [p.1, q.1], &inner) {
                 Some((g, true)) => {
                     out.push(([p.0, g, f], p.1.side));
                     out.push(([g, q.0, f], q.1.side));
                 }
                 Some((_, false)) => {}
                 None => {
-                    let side = nearest_side([&p.1.position, &q.1.position, &at], &[p.1, q.1]);
+                    let side = nearest_side([&p.1.position, &q.1.position, &inner.at], &[p.1, q.1]);
                     out.push(([p.0, q.0, f], side));
                 }
             }
@@ -353,7 +408,7 @@ impl<'v, 'f> View<'v, 'f> {
         pattern: u8,
         face: u8,
         segment: [&Crossing; 2],
-        at: [f32; 3],
+        here: &Inner,
     ) -> Option<(u32, bool)> {
         if ambiguous(pattern, face)
             || widen(&segment[0].gradient).dot(&widen(&segment[1].gradient)) > EDGE_COSINE
@@ -361,19 +416,21 @@ impl<'v, 'f> View<'v, 'f> {
             return None;
         }
         let (axis, upper) = (usize::from(face / 2), face % 2 == 1);
-        let mut across = l;
-        across[axis] += if upper { 1 } else { -1 };
-        let (g, there) = self.inner(across)?;
-        let (below, above) = if upper { (at, there) } else { (there, at) };
+        let (g, there) = self.inner(across(l, face))?;
+        let (below, above) = if upper { (here, &there) } else { (&there, here) };
         let mut base = l;
         base[axis] += i32::from(upper);
         let corner = self.lattice.node(add(self.block().at.map(|b| b * BLOCK), base));
-        let (a, b) = (widen(&below), widen(&above));
+        let (a, b) = (widen(&below.at), widen(&above.at));
         let s = (corner[axis] - a[axis]) / (b[axis] - a[axis]);
         let m = a + (b - a) * s;
+        // The common face of the two boxes: longer when both have borrowed in the same direction.
+        let both = here.borrowed.filter(|_| here.borrowed == there.borrowed);
         let inside = (0..3).filter(|&k| k != axis).all(|k| {
             let x = (m[k] - corner[k]) / self.lattice.cell;
-            x > INNER_MARGIN && x < 1.0 - INNER_MARGIN
+            let low = if both.is_some_and(|f| usize::from(f) == 2 * k) { -1.0 } else { 0.0 };
+            let high = if both.is_some_and(|f| usize::from(f) == 2 * k + 1) { 2.0 } else { 1.0 };
+            x > low + INNER_MARGIN && x < high - INNER_MARGIN
         });
         inside.then_some((g, upper))
     }
