@@ -131,12 +131,12 @@ fn judged(profile: &Profile) -> (Verdict, &'static str, String) {
     match profile.trapped {
         Trapped::Air => (
             Verdict::Caution,
-            "they keep air and every support built inside them, and nobody can see in",
+            "air and every support built inside stay there, and nobody can see in",
             format!("Give every chamber {hole} if its inside is to be seen or its supports removed."),
         ),
-        Trapped::Powder => (Verdict::Fail, "loose powder cannot leave them", open),
-        Trapped::Resin => (Verdict::Fail, "uncured resin cannot leave them", open),
-        Trapped::Support => (Verdict::Fail, "support material cannot be washed out of them", open),
+        Trapped::Powder => (Verdict::Fail, "loose powder cannot leave", open),
+        Trapped::Resin => (Verdict::Fail, "uncured resin cannot leave", open),
+        Trapped::Support => (Verdict::Fail, "support material cannot be washed out", open),
     }
 }
 

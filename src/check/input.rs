@@ -26,6 +26,10 @@ impl Fault {
 pub struct AuditFigures {
     /// Triangles with a corner that does not exist or is not finite, or that name a vertex twice.
     pub bad_triangles: Fault,
+    /// Triangles whose three corners lie on a line.
+    pub flat_triangles: Fault,
+    /// Triangles with the same three corners as another.
+    pub doubled_triangles: Fault,
     /// Edges of one triangle only.
     pub open_edges: Fault,
     /// Edges of more than two triangles.

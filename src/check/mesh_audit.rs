@@ -8,7 +8,7 @@ use crate::units::Unit;
 const SOURCE: &str = "3MF core specification 1.4.0, section 4.1: every edge belongs to two triangles that run \
                       through it opposite ways, normals face outward; crossings should not occur";
 
-/// The findings `mesh-data`, `mesh-closed`, `mesh-manifold`, `mesh-oriented`, `mesh-crossings`, then
+/// The findings `mesh-data`, `mesh-flat`, `mesh-closed`, `mesh-manifold`, `mesh-oriented`, `mesh-crossings`, then
 /// `mesh-shells` and `mesh-euler` for information. An empty mesh has `mesh-data` alone.
 pub(super) fn findings(input: &CheckInput<'_>) -> Vec<Finding> {
     let a = &input.audit;
@@ -38,6 +38,17 @@ pub(super) fn findings(input: &CheckInput<'_>) -> Vec<Finding> {
             ["triangle has", "triangles have"],
             "a corner that does not exist, is not finite or is named twice",
             "Write the file again; the program that wrote it left out or spoiled points.",
+        ),
+        fault(
+            "mesh-flat",
+            Fault::new(
+                a.flat_triangles.count + a.doubled_triangles.count,
+                a.flat_triangles.place_mm.or(a.doubled_triangles.place_mm),
+            ),
+            "Every triangle has an area and no two have the same corners.",
+            ["triangle has", "triangles have"],
+            "no area or the same corners as another, so no way to face",
+            "Remove these triangles and join what they parted.",
         ),
         fault(
             "mesh-closed",

@@ -24,6 +24,7 @@ mod samples;
 mod sheets;
 mod shells;
 mod wall;
+mod wall_edges;
 mod wall_measure;
 
 pub use chambers::{Chamber, chambers};
@@ -145,6 +146,7 @@ mod tests {
             names,
             [
                 "mesh-data",
+                "mesh-flat",
                 "mesh-closed",
                 "mesh-manifold",
                 "mesh-oriented",
@@ -200,13 +202,15 @@ mod tests {
         let pla = profile("mex-pla");
         let place = Some(Vec3::new(1.0, 2.0, 3.0));
         type Field = fn(&mut AuditFigures) -> &mut Fault;
-        let cases: [(&str, Field, &str); 6] = [
+        let cases: [(&str, Field, &str); 8] = [
             ("mesh-closed", |a| &mut a.open_edges, "3 edges belong to one triangle only"),
             ("mesh-manifold", |a| &mut a.crowded_edges, "3 edges or vertices are shared"),
             ("mesh-manifold", |a| &mut a.pinched_vertices, "3 edges or vertices are shared"),
             ("mesh-oriented", |a| &mut a.turned_edges, "3 edges have two triangles that face opposite ways"),
             ("mesh-crossings", |a| &mut a.crossings, "3 pairs of triangles cross each other"),
             ("mesh-data", |a| &mut a.bad_triangles, "3 triangles have a corner"),
+            ("mesh-flat", |a| &mut a.flat_triangles, "3 triangles have no area"),
+            ("mesh-flat", |a| &mut a.doubled_triangles, "3 triangles have no area"),
         ];
         for (check, field, words) in cases {
             let mut audit = clean(&mesh);

@@ -6,13 +6,15 @@ use super::{AskedWall, CheckInput, Finding, Verdict};
 use crate::profile::Profile;
 use crate::units::{Quantity, Unit};
 
-/// The findings `wall-ball` and `wall-ray` against the profile, and `wall-asked` against the wall asked for.
+/// The findings `wall-ball` and `wall-ray` against the profile, `wall-asked` against the wall asked for, and
+/// `wall-edges` for information when there are edges thinner than either.
 ///
 /// Below the limit of a supported wall: fail. Between it and the limit of an unsupported wall: caution.
 /// Thinner than asked, less twice the tolerance: caution.
 pub(super) fn findings(body: &Body<'_>, input: &CheckInput<'_>) -> Vec<Finding> {
-    let asked = input.asked.as_ref().map_or(0.0, |a| a.wall_mm);
-    let figures = of_body(body, input.profile.wall_unsupported_mm.value.max(asked));
+    let asked = input.asked.as_ref().map_or(0.0, least_asked);
+    let limit = input.profile.wall_unsupported_mm.value.max(asked);
+    let figures = of_body(body, limit);
     let mut out = Vec::new();
     for (check, how, place) in
         [("wall-ball", "inscribed balls", figures.ball), ("wall-ray", "rays", figures.ray)]
@@ -31,7 +33,29 @@ pub(super) fn findings(body: &Body<'_>, input: &CheckInput<'_>) -> Vec<Finding> 
     if let (Some(asked), Some(ball)) = (&input.asked, &figures.ball) {
         out.push(against_asked(asked, ball));
     }
+    if let Some(edge) = &figures.edge {
+        out.push(edges(edge, &figures, limit));
+    }
     out
+}
+
+fn edges(edge: &WallPlace, figures: &WallFigures, limit: f64) -> Finding {
+    Finding {
+        place_mm: Some(edge.place_mm),
+        ..Finding::information(
+            "wall-edges",
+            edge.thickness_mm,
+            Unit::Mm,
+            format!(
+                "Edges and teeth thinner than {} that stand on thicker material take {:.2} % of the surface, the \
+                 thinnest {:.4} mm; they are not counted as walls and print blunt or not at all.",
+                Quantity::new(limit, Unit::Mm),
+                100.0 * figures.edge_share,
+                edge.thickness_mm
+            ),
+            Finding::OWN_RULE.to_owned(),
+        )
+    }
 }
 
 fn against_profile(
@@ -51,11 +75,11 @@ fn against_profile(
     } else {
         (Verdict::Pass, supported, "not below the limit")
     };
-    let share = figures.share_below(limit.value);
+    let share = figures.thin_share;
     let spread = if verdict == Verdict::Pass {
         String::new()
     } else if share > 0.0 {
-        format!(" {:.2} % of the surface lies over such a wall.", 100.0 * share)
+        format!(" {:.2} % of the surface lies over walls below the limits.", 100.0 * share)
     } else {
         " It is a small place.".to_owned()
     };
@@ -107,8 +131,13 @@ fn other_process(thickness: f64, profile: &Profile) -> Option<&'static str> {
     })
 }
 
+/// The thinnest wall that still counts as the one asked for, mm.
+fn least_asked(asked: &AskedWall) -> f64 {
+    (asked.wall_mm - 2.0 * asked.tolerance_mm).max(0.0)
+}
+
 fn against_asked(asked: &AskedWall, ball: &WallPlace) -> Finding {
-    let limit = (asked.wall_mm - 2.0 * asked.tolerance_mm).max(0.0);
+    let limit = least_asked(asked);
     let thin = ball.thickness_mm < limit;
     let relation = if thin { "thinner" } else { "not thinner" };
     Finding {

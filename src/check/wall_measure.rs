@@ -21,6 +21,7 @@
 
 use super::body::Body;
 use super::samples::{Sample, in_triangle, over};
+use super::wall_edges::stand_on_thicker;
 use crate::geom::Vec3;
 use crate::mesh::{Fans, TriMesh};
 use rayon::prelude::*;
@@ -35,10 +36,11 @@ const FACING: f64 = -0.5;
 const AHEAD: f64 = 0.8;
 /// Least cosine between the normals of triangles around a vertex that belong to one smooth side: 40 degrees.
 const SAME_SIDE: f64 = 0.766;
-/// A triangle is thin when its least altitude is below this share of its longest side; then its normal is
-/// believed only if it is within 60 degrees of that of its surroundings (the vertices of a mesher carry errors of
-/// some micrometres, enough to turn a sliver over).
-const THIN: f64 = 0.05;
+/// A triangle is a sliver when its least altitude is below this share of the mesh's diagonal; then its normal is
+/// believed only if it is within 60 degrees of that of its surroundings. (The vertices of a mesher carry errors of some
+/// micrometres, enough to turn a sliver over. A share of its longest side would not do: the long facets of
+/// drawn shapes are exact.)
+const SLIVER: f64 = 1e-4;
 /// Steps of shrinking; 3 to 5 are usual.
 const STEPS: usize = 40;
 /// A ball is done when no facing point is deeper in it than this share of its radius, so a thickness is at most this
@@ -49,6 +51,9 @@ const DEPTH: f64 = 1e-3;
 const THICK: f64 = 10.0;
 /// How many samples that are: so many triangles may be asked in all, in thousands, and 16 to 2000 samples.
 const THICK_BUDGET: usize = 20_000;
+/// A ball fits into the material when the surface is nowhere deeper in it than the rest of this share of its radius;
+/// the rest is for facets.
+const HOLDS: f64 = 0.9;
 /// Lowest samples whose surroundings are sampled again, and how often in each triangle there.
 const ROUNDS: [(usize, u32); 3] = [(64, 8), (24, 24), (8, 64)];
 
@@ -64,28 +69,20 @@ pub struct WallPlace {
 /// Thickness of a solid's walls.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct WallFigures {
-    /// Thinnest by inscribed balls; `None` when no two parts of the surface face each other.
+    /// Thinnest wall by inscribed balls, edges left out; `None` when no two parts of the surface face each other.
     pub ball: Option<WallPlace>,
-    /// Thinnest by rays.
+    /// Thinnest wall by rays, edges left out.
     pub ray: Option<WallPlace>,
+    /// Thinnest edge by inscribed balls: a place thinner than the limit that stands on thicker material.
+    pub edge: Option<WallPlace>,
+    /// Share, 0..=1, of the surface over walls thinner than the limit.
+    pub thin_share: f64,
+    /// Share, 0..=1, of the surface over edges thinner than the limit.
+    pub edge_share: f64,
     /// The ray thickness (mm) that half of the area that has one stays below.
     pub median_ray_mm: Option<f64>,
     /// Points measured, refinement included.
     pub samples: usize,
-    /// Ball thickness and area (mm2) of the samples of the first pass that have one, thinnest first.
-    spread: Vec<(f64, f64)>,
-    /// Area of all samples of the first pass, mm2.
-    area_mm2: f64,
-}
-
-impl WallFigures {
-    /// Share, 0..=1, of the surface under which the ball thickness is below `limit_mm`, which must not be above
-    /// the `interest_mm` of the measurement.
-    #[must_use]
-    pub fn share_below(&self, limit_mm: f64) -> f64 {
-        let below: f64 = self.spread.iter().take_while(|s| s.0 < limit_mm).map(|s| s.1).sum();
-        if self.area_mm2 > 0.0 { below / self.area_mm2 } else { 0.0 }
-    }
 }
 
 /// Measures the walls of a solid.
@@ -94,58 +91,74 @@ impl WallFigures {
 /// so much area for finer ones; then the surroundings of the thinnest samples are sampled three times over, finer
 /// each time. The minimum is that of the samples: a thinner place smaller than their spacing can be missed.
 ///
+/// A place thinner than `limit_mm` is an edge, not a wall, when a ball of diameter `limit_mm` fits into the material so near
+/// that the two are at most `limit_mm` (and the spacing of the samples) apart.
+///
 /// - `mesh`: closed, outward, free of crossings; otherwise the figures mean nothing (but there are some).
-/// - `interest_mm`: greatest thickness of interest, above 0. The thinnest ball is always found; balls thicker than
-///   both this and the thinnest ray are not worked out.
+/// - `limit_mm`: the thickness the walls should have, above 0.
 /// - returns: thicknesses at most 0.1 % too great; no place for an empty or spoiled mesh.
 #[must_use]
-pub fn wall(mesh: &TriMesh, interest_mm: f64) -> WallFigures {
-    Body::new(mesh).map(|b| of_body(&b, interest_mm)).unwrap_or_default()
+pub fn wall(mesh: &TriMesh, limit_mm: f64) -> WallFigures {
+    Body::new(mesh).map(|b| of_body(&b, limit_mm)).unwrap_or_default()
 }
 
-pub(super) fn of_body(body: &Body<'_>, interest_mm: f64) -> WallFigures {
+pub(super) fn of_body(body: &Body<'_>, limit_mm: f64) -> WallFigures {
     let probe = Probe::new(body);
     let triangles = u32::try_from(body.mesh.triangles.len()).unwrap_or(u32::MAX);
     let samples = over(body.mesh, &body.areas, triangles.clamp(SAMPLES.0, SAMPLES.1));
-    let mut measured = probe.rays(&samples);
-    let mut figures = WallFigures {
-        ray: thinnest(&measured, ray_of),
-        median_ray_mm: median(&measured),
-        samples: measured.len(),
-        area_mm2: samples.iter().map(|s| s.area).sum(),
-        ..WallFigures::default()
+    let first = probe.rays(&samples);
+    let area = samples.iter().fold(0.0, |sum, s| sum + s.area);
+    let spacing = (area / super::mesh_audit::as_number(samples.len().max(1))).sqrt();
+    let ground = Ground {
+        full: first.iter().filter(|m| m.free.is_finite()).map(|m| m.middle(limit_mm)).collect(),
+        limit: limit_mm,
+        reach: 1.5 * limit_mm + 0.7 * spacing,
     };
-    let thinnest_ray = figures.ray.map_or(0.0, |r| r.thickness_mm);
-    let most = interest_mm.max(thinnest_ray);
-    let thick = thinnest_ray > THICK * interest_mm;
+    let mut figures =
+        WallFigures { median_ray_mm: median(&first), samples: first.len(), ..WallFigures::default() };
+    let (mut walls, mut edges) = probe.parted(first, &ground, ray_of);
+    let thinnest_ray = thinnest(&walls, ray_of).map_or(0.0, |r| r.thickness_mm);
+    let most = limit_mm.max(thinnest_ray);
+    let thick = thinnest_ray > THICK * limit_mm;
     if thick {
         let keep = (THICK_BUDGET / (body.areas.len() / 1000 + 1)).clamp(16, 2000);
-        if measured.len() > keep {
-            measured.select_nth_unstable_by(keep, |a, b| order(a, b, ray_of));
-            measured.truncate(keep);
+        if walls.len() > keep {
+            walls.select_nth_unstable_by(keep, |a, b| order(a, b, ray_of));
+            walls.truncate(keep);
         }
     }
-    probe.balls(&mut measured, most);
-    figures.ball = thinnest(&measured, ball_of);
-    figures.spread =
-        measured.iter().filter(|m| m.ball.is_finite()).map(|m| (m.ball, m.sample.area)).collect();
-    figures.spread.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.total_cmp(&b.1)));
-    for (lowest, each) in if thick { &[][..] } else { &ROUNDS[..] } {
-        let mut around = probe.around_lowest(&mut measured, *lowest, ball_of);
-        around.extend(probe.around_lowest(&mut measured, *lowest, ray_of));
-        around.sort_unstable();
-        around.dedup();
-        let mut finer = Vec::new();
-        for t in around {
-            in_triangle(body.mesh, t, body.areas[t as usize], *each, &mut finer);
+    for (lowest, each) in std::iter::once(&(0, 0)).chain(if thick { &[][..] } else { &ROUNDS[..] }) {
+        if *each > 0 {
+            let finer = probe.rays(&probe.around_lowest(&mut walls, *lowest, *each));
+            figures.samples += finer.len();
+            (walls, edges) = probe.parted(finer, &ground, ray_of);
         }
-        measured = probe.rays(&finer);
-        probe.balls(&mut measured, most);
-        figures.samples += measured.len();
-        figures.ball = thinner(figures.ball, thinnest(&measured, ball_of));
-        figures.ray = thinner(figures.ray, thinnest(&measured, ray_of));
+        probe.balls(&mut walls, most);
+        probe.balls(&mut edges, most);
+        let (parted, more) = probe.parted(walls, &ground, ball_of);
+        walls = parted;
+        edges.extend(more);
+        if *each == 0 && area > 0.0 {
+            let share = |all: &[Measured]| {
+                let thin = all.iter().filter(|m| m.ball < limit_mm);
+                thin.fold(0.0, |sum, m| sum + m.sample.area) / area
+            };
+            (figures.thin_share, figures.edge_share) = (share(&walls), share(&edges));
+        }
+        figures.ball = thinner(figures.ball, thinnest(&walls, ball_of));
+        figures.ray = thinner(figures.ray, thinnest(&walls, ray_of));
+        figures.edge = thinner(figures.edge, thinnest(&edges, ball_of));
     }
     figures
+}
+
+/// The material thin places may stand on.
+struct Ground {
+    /// Middles of balls of the limit's diameter that touch the surface at the samples of the first pass.
+    full: Vec<Vec3>,
+    limit: f64,
+    /// From the middle of a thin place to the middle of such a ball, mm.
+    reach: f64,
 }
 
 /// What was measured under one sample, mm; infinite where nothing faces it.
@@ -158,6 +171,13 @@ struct Measured {
     free: f64,
     ray: f64,
     ball: f64,
+}
+
+impl Measured {
+    /// The middle of a ball of this diameter that touches the surface here from inside.
+    fn middle(&self, diameter: f64) -> Vec3 {
+        self.sample.point - self.normal * (0.5 * diameter)
+    }
 }
 
 fn ball_of(m: &Measured) -> f64 {
@@ -224,8 +244,12 @@ struct Probe<'b, 'm> {
 impl<'b, 'm> Probe<'b, 'm> {
     fn new(body: &'b Body<'m>) -> Self {
         let fans = Fans::build(body.mesh);
-        let normals = (0..body.normals.len()).into_par_iter().map(|t| believed(body, &fans, t)).collect();
-        let start = 1e-6 * body.mesh.bounds().extent().norm();
+        let diagonal = body.mesh.bounds().extent().norm();
+        let normals = (0..body.normals.len())
+            .into_par_iter()
+            .map(|t| believed(body, &fans, t, SLIVER * diagonal))
+            .collect();
+        let start = 1e-6 * diagonal;
         Self { body, fans, normals, start }
     }
 
@@ -314,29 +338,52 @@ impl<'b, 'm> Probe<'b, 'm> {
         stopped
     }
 
-    /// The triangles around the `lowest` lowest of `measured` by `key`, which reorders them.
-    fn around_lowest(&self, measured: &mut [Measured], lowest: usize, key: fn(&Measured) -> f64) -> Vec<u32> {
-        if measured.len() > lowest {
-            measured.select_nth_unstable_by(lowest, |a, b| order(a, b, key));
-        }
+    /// Parts samples into walls and edges by the thickness `key` gives.
+    fn parted(
+        &self,
+        measured: Vec<Measured>,
+        ground: &Ground,
+        key: fn(&Measured) -> f64,
+    ) -> (Vec<Measured>, Vec<Measured>) {
+        let thin: Vec<Vec3> =
+            measured.iter().filter(|m| key(m) < ground.limit).map(|m| m.middle(key(m))).collect();
+        let tree = &self.body.tree;
+        let radius = HOLDS * 0.5 * ground.limit;
+        let on_thicker =
+            stand_on_thicker(&thin, &ground.full, ground.reach, |p| tree.closest(p, radius).is_none());
+        let mut on_thicker = on_thicker.into_iter();
+        measured.into_iter().partition(|m| key(m) >= ground.limit || !on_thicker.next().unwrap_or(false))
+    }
+
+    /// Samples, `each` in a triangle, around the `lowest` lowest of `measured` by ball and by ray; reorders them.
+    fn around_lowest(&self, measured: &mut [Measured], lowest: usize, each: u32) -> Vec<Sample> {
         let mut around = Vec::new();
-        for m in measured.iter().take(lowest).filter(|m| key(m).is_finite()) {
-            for v in self.body.mesh.triangles[m.sample.triangle as usize] {
-                around.extend_from_slice(self.fans.around(v));
+        for key in [ball_of, ray_of] {
+            if measured.len() > lowest {
+                measured.select_nth_unstable_by(lowest, |a, b| order(a, b, key));
+            }
+            for m in measured.iter().take(lowest).filter(|m| key(m).is_finite()) {
+                for v in self.body.mesh.triangles[m.sample.triangle as usize] {
+                    around.extend_from_slice(self.fans.around(v));
+                }
             }
         }
         around.sort_unstable();
         around.dedup();
-        around
+        let mut finer = Vec::new();
+        for t in around {
+            in_triangle(self.body.mesh, t, self.body.areas[t as usize], each, &mut finer);
+        }
+        finer
     }
 }
 
-/// The normal of triangle `t` when it can be believed, zero otherwise.
-fn believed(body: &Body<'_>, fans: &Fans, t: usize) -> Vec3 {
+/// The normal of triangle `t` when it can be believed, zero otherwise; `least` is the altitude (mm) that makes it so.
+fn believed(body: &Body<'_>, fans: &Fans, t: usize, least: f64) -> Vec3 {
     let n = body.normals[t];
     let [a, b, c] = body.mesh.corners(t);
     let longest = (b - a).norm().max((c - b).norm()).max((a - c).norm());
-    if 2.0 * body.areas[t] >= THIN * longest * longest {
+    if 2.0 * body.areas[t] >= least * longest {
         return n;
     }
     let mut around = Vec3::zeros();
@@ -369,7 +416,7 @@ mod tests {
             assert!((ray - 2.0).abs() < tolerance, "level {level}: ray {ray}");
             assert!(ball <= ray + 1e-9);
             assert!((w.median_ray_mm.unwrap() - 2.0).abs() < tolerance);
-            assert!(w.share_below(2.0 - tolerance) == 0.0 && (w.share_below(3.0) - 1.0).abs() < 1e-12);
+            assert!((w.thin_share - 1.0).abs() < 1e-12 && w.edge.is_none());
         }
     }
 
@@ -453,6 +500,53 @@ mod tests {
         assert!((m.ball - 40.0 * (0.5 * b).tan()).abs() < 1e-3 * m.ball, "{}", m.ball);
     }
 
+    /// A box of 40 x 40 x 10 carries a tooth of 0.1 x 3 mm, 0.8 high: an edge, not a wall. Made 8 high it is a wall.
+    #[test]
+    fn a_tooth_is_an_edge_and_a_fin_is_a_wall() {
+        for (height, is_wall) in [(0.8, false), (8.0, true)] {
+            let w = wall(&tooth(height), 1.2);
+            let (wall, edge) = (w.ball.unwrap().thickness_mm, w.edge.unwrap().thickness_mm);
+            assert!((edge - 0.1).abs() < 1e-3, "{w:?}");
+            assert!((wall - if is_wall { 0.1 } else { 10.0 }).abs() < 1e-2, "{w:?}");
+            assert_eq!(w.thin_share > 0.0, is_wall);
+            assert!(w.edge_share > 0.0);
+        }
+    }
+
+    /// A strip too narrow for a ball of the limit anywhere is a wall all over, its sides notwithstanding.
+    #[test]
+    fn a_thin_strip_stands_on_nothing() {
+        let w = wall(&shapes::cuboid(Vec3::zeros(), Vec3::new(40.0, 3.0, 0.8)), 1.2);
+        assert!((w.ball.unwrap().thickness_mm - 0.8).abs() < 1e-3 && w.edge.is_none(), "{w:?}");
+    }
+
+    /// The profile of a plate with a tooth in the middle of its top, drawn out along y.
+    fn tooth(height: f64) -> TriMesh {
+        let outline = [
+            (0.0, 0.0),
+            (40.0, 0.0),
+            (40.0, 10.0),
+            (20.1, 10.0),
+            (20.1, 10.0 + height),
+            (20.0, 10.0 + height),
+            (20.0, 10.0),
+            (0.0, 10.0),
+        ];
+        let mut positions = Vec::new();
+        for y in [0.0, 40.0] {
+            positions.extend(outline.iter().map(|&(x, z)| Vec3::new(x, y, z)));
+        }
+        // Front (y = 0, seen from -y counter-clockwise): the plate as a fan over its top corners, then the tooth.
+        let front: [[u32; 3]; 6] = [[0, 1, 3], [1, 2, 3], [0, 3, 6], [0, 6, 7], [3, 4, 5], [3, 5, 6]];
+        let mut triangles = front.to_vec();
+        triangles.extend(front.map(|[a, b, c]| [a + 8, c + 8, b + 8]));
+        for i in 0..8 {
+            let j = (i + 1) % 8;
+            triangles.extend([[j, i, i + 8], [j, i + 8, j + 8]]);
+        }
+        shapes::from_triangles(positions, triangles)
+    }
+
     /// In the middle of a ball every facet is nearest; the lowest samples must do.
     #[test]
     fn a_solid_ball_is_as_thick_as_its_diameter() {
@@ -475,6 +569,5 @@ mod tests {
     fn nothing_is_measured_of_nothing() {
         let w = wall(&TriMesh::default(), 1.2);
         assert!(w.ball.is_none() && w.ray.is_none() && w.samples == 0 && w.median_ray_mm.is_none());
-        assert!(w.share_below(1.0).abs() < f64::EPSILON);
     }
 }

@@ -223,13 +223,9 @@ pub fn audit_figures(audit: &Audit) -> AuditFigures {
         Fault::new(count, placed.map(|f| f.place_mm))
     };
     AuditFigures {
-        bad_triangles: fault(&[
-            FaultKind::IndexOutOfRange,
-            FaultKind::NotFinite,
-            FaultKind::RepeatedCorner,
-            FaultKind::ZeroArea,
-            FaultKind::DuplicateTriangle,
-        ]),
+        bad_triangles: fault(&[FaultKind::IndexOutOfRange, FaultKind::NotFinite, FaultKind::RepeatedCorner]),
+        flat_triangles: fault(&[FaultKind::ZeroArea]),
+        doubled_triangles: fault(&[FaultKind::DuplicateTriangle]),
         open_edges: fault(&[FaultKind::OpenEdge]),
         crowded_edges: fault(&[FaultKind::CrowdedEdge]),
         pinched_vertices: fault(&[FaultKind::PinchedVertex]),
