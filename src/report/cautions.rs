@@ -5,7 +5,9 @@
 //! nothing is pronounced fit for a use. Who decides is named instead: local codes and qualified laboratories.
 
 use super::record::{SetRecord, StageRecord};
-use super::words::{check_name, findings_of, one_line, place, set_sentence, stage_name, verdict_sentence};
+use super::words::{
+    advice_of, check_name, grouped_findings, one_line, place, set_sentence, stage_name, verdict_sentence,
+};
 use crate::check::Verdict;
 
 /// A heading and the lines under it.
@@ -163,16 +165,18 @@ pub fn cautions_text(set: &SetRecord) -> String {
     for stage in &set.stages {
         heading(&mut out, &format!("{}: {}", stage_name(stage.index, stage.tau), stage.verdict().word()));
         for verdict in [Verdict::Fail, Verdict::Caution] {
-            for finding in findings_of(stage, verdict) {
-                let mut text =
-                    format!("{} ({}): {}", check_name(finding.check), verdict.word(), finding.message);
-                if let Some(p) = &finding.place_mm {
-                    text.push_str(&format!(" Place: {}.", place(p)));
+            for group in grouped_findings(stage, verdict) {
+                let mut text = format!("{} ({}):", check_name(group[0].check), verdict.word());
+                for finding in &group {
+                    text.push_str(&format!(" {}", finding.message));
+                    if let Some(p) = &finding.place_mm {
+                        text.push_str(&format!(" Place: {}.", place(p)));
+                    }
                 }
-                if !finding.advice.is_empty() {
-                    text.push_str(&format!(" What to change: {}", finding.advice));
+                for advice in advice_of(&group) {
+                    text.push_str(&format!(" What to change: {advice}"));
                 }
-                text.push_str(&format!(" [Limit: {}]", finding.source));
+                text.push_str(&format!(" [Limit: {}]", group[0].source));
                 wrap(&mut out, "- ", "  ", &one_line(&text));
             }
         }

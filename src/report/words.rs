@@ -110,6 +110,31 @@ pub(super) fn findings_of(stage: &StageRecord, verdict: Verdict) -> impl Iterato
     stage.findings.iter().filter(move |f| f.verdict == verdict)
 }
 
+/// The findings of a stage with the given verdict, neighbours of one check and one source together.
+pub(super) fn grouped_findings(stage: &StageRecord, verdict: Verdict) -> Vec<Vec<&Finding>> {
+    let mut groups: Vec<Vec<&Finding>> = Vec::new();
+    for finding in findings_of(stage, verdict) {
+        match groups.last_mut() {
+            Some(group) if group[0].check == finding.check && group[0].source == finding.source => {
+                group.push(finding);
+            }
+            _ => groups.push(vec![finding]),
+        }
+    }
+    groups
+}
+
+/// The advice of a group, each only once.
+pub(super) fn advice_of<'f>(group: &[&'f Finding]) -> Vec<&'f str> {
+    let mut all: Vec<&str> = Vec::new();
+    for finding in group {
+        if !finding.advice.is_empty() && !all.contains(&finding.advice.as_str()) {
+            all.push(&finding.advice);
+        }
+    }
+    all
+}
+
 /// The name of a check for people: `wall-ball` becomes `Wall ball`.
 pub(super) fn check_name(check: &str) -> String {
     let mut name = check.replace('-', " ");

@@ -174,6 +174,22 @@ fn a_maker_finds_the_figures_with_units_and_what_to_change() {
 }
 
 #[test]
+fn findings_of_one_check_are_told_together() {
+    let mut set = sample::set();
+    let mut more = set.stages[0].findings[2].clone();
+    more.message = "A second chamber.".into();
+    set.stages[0].findings.insert(3, more);
+    set.stages.truncate(1);
+    let page = sheet_html(&set, &[]);
+    assert_eq!(page.matches("class=\"finding caution\"").count(), 1);
+    assert!(page.contains("<li>A second chamber. "));
+    let text = cautions_text(&set);
+    assert_eq!(text.matches("Chambers sealed (caution)").count(), 1);
+    assert_eq!(text.matches("What to change:").count(), 1, "the same advice is given once");
+    assert!(text.contains("A second chamber."));
+}
+
+#[test]
 fn what_was_not_made_or_not_measured_is_said() {
     let mut set = sample::set();
     set.failures.push((3, 0.7, "The grid would need 90 GiB; raise grid_mm.".into()));

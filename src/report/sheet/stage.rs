@@ -6,7 +6,8 @@ use crate::check::{Finding, Verdict};
 use crate::report::picture::VIEWS;
 use crate::report::record::{SetRecord, StageRecord};
 use crate::report::words::{
-    check_name, figure, findings_of, grouped, moment, one_line, place, printed, stage_name,
+    advice_of, check_name, figure, findings_of, grouped, grouped_findings, moment, one_line, place, printed,
+    stage_name,
 };
 use crate::units::Unit;
 use maud::{Markup, html};
@@ -104,7 +105,7 @@ fn findings(record: &StageRecord) -> Markup {
         h3 { "Findings" }
         @if record.findings.is_empty() { p { "No check was run." } }
         @for verdict in [Verdict::Fail, Verdict::Caution] {
-            @for finding in findings_of(record, verdict) { (told(finding)) }
+            @for group in grouped_findings(record, verdict) { (told(&group)) }
         }
         @if !passes.is_empty() {
             details .screen {
@@ -119,20 +120,33 @@ fn findings(record: &StageRecord) -> Markup {
     }
 }
 
-/// A finding that asks for something.
-fn told(finding: &Finding) -> Markup {
+/// Findings of one check that ask for something.
+fn told(group: &[&Finding]) -> Markup {
+    let first = group[0];
     html! {
-        div .finding .(finding.verdict.word()) {
-            p { (badge(finding.verdict)) " " b { (check_name(finding.check)) } }
-            p { (one_line(&finding.message)) }
-            p .numbers {
-                "Measured " b { (printed(finding.value, finding.unit)) }
-                @if let Some(limit) = finding.limit { " · limit " b { (printed(limit, finding.unit)) } }
-                @if let Some(p) = &finding.place_mm { " · place " (place(p)) }
+        div .finding .(first.verdict.word()) {
+            p { (badge(first.verdict)) " " b { (check_name(first.check)) } }
+            @if let [only] = group {
+                p { (one_line(&only.message)) }
+                p .numbers { (numbers(only)) }
+            } @else {
+                ul .lines {
+                    @for finding in group {
+                        li { (one_line(&finding.message)) " " span .numbers { (numbers(finding)) } }
+                    }
+                }
             }
-            @if !finding.advice.is_empty() { p { b { "What to change: " } (one_line(&finding.advice)) } }
-            p .source { "Limit from: " (one_line(&finding.source)) }
+            @for advice in advice_of(group) { p { b { "What to change: " } (one_line(advice)) } }
+            p .source { "Limit from: " (one_line(&first.source)) }
         }
+    }
+}
+
+fn numbers(finding: &Finding) -> Markup {
+    html! {
+        "Measured " b { (printed(finding.value, finding.unit)) }
+        @if let Some(limit) = finding.limit { " · limit " b { (printed(limit, finding.unit)) } }
+        @if let Some(p) = &finding.place_mm { " · place " (place(p)) }
     }
 }
 
