@@ -108,7 +108,7 @@ pub enum SimplifyError {
 
 /// Parts of the tolerance given to the simplifier as its error goal, one level after the other. Its estimate is an
 /// average, so the first goal stays far below the tolerance.
-const GOALS: [f64; 1] = [0.3];
+const GOALS: [f64; 2] = [0.3, 0.7];
 /// A level that keeps more than this part of its triangles is the last.
 const ENOUGH: f64 = 0.85;
 /// Mean cosine between a triangle and the normals at its corners below which it is compared with the input.
