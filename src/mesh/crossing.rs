@@ -157,3 +157,132 @@ fn two_sided(s: [i8; 3]) -> bool {
 fn sign(x: f64) -> i8 {
     i8::from(x > 0.0) - i8::from(x < 0.0)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    type Int = [i128; 3];
+    /// A rational point: x, y, z over w > 0.
+    type Ratio = [i128; 4];
+
+    fn sub(a: Int, b: Int) -> Int {
+        [a[0] - b[0], a[1] - b[1], a[2] - b[2]]
+    }
+
+    fn cross(a: Int, b: Int) -> Int {
+        [a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0]]
+    }
+
+    fn dot(a: Int, b: Int) -> i128 {
+        a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
+    }
+
+    fn normal(t: [Int; 3]) -> Int {
+        cross(sub(t[1], t[0]), sub(t[2], t[0]))
+    }
+
+    /// w (p - a) for the rational point p.
+    fn from(p: Ratio, a: Int) -> Int {
+        [p[0] - p[3] * a[0], p[1] - p[3] * a[1], p[2] - p[3] * a[2]]
+    }
+
+    fn in_triangle(p: Ratio, t: [Int; 3]) -> bool {
+        let n = normal(t);
+        dot(n, from(p, t[0])) == 0
+            && (0..3).all(|k| dot(n, cross(sub(t[(k + 1) % 3], t[k]), from(p, t[k]))) >= 0)
+    }
+
+    /// The point of uv where a linear function with values f at u and g at v, of opposite signs, is zero.
+    fn zero(u: Int, v: Int, f: i128, g: i128) -> Ratio {
+        let s = (g - f).signum();
+        [0, 1, 2, 3].map(|k| if k < 3 { s * (u[k] * g - v[k] * f) } else { (g - f).abs() })
+    }
+
+    /// Every point that can be extreme in the common part of two triangles, in rational arithmetic.
+    fn extreme_points(a: [Int; 3], b: [Int; 3]) -> Vec<Ratio> {
+        let mut out = Vec::new();
+        for (s, t) in [(a, b), (b, a)] {
+            let n = normal(t);
+            for k in 0..3 {
+                let (u, v) = (s[k], s[(k + 1) % 3]);
+                out.push([u[0], u[1], u[2], 1]);
+                let (f, g) = (dot(n, sub(u, t[0])), dot(n, sub(v, t[0])));
+                if f.signum() * g.signum() < 0 {
+                    out.push(zero(u, v, f, g));
+                }
+                for j in 0..3 {
+                    // Edge against edge within one plane.
+                    let (c, d) = (t[j], t[(j + 1) % 3]);
+                    let side = |x: Int| dot(n, cross(sub(d, c), sub(x, c)));
+                    if f == 0 && g == 0 && side(u).signum() * side(v).signum() < 0 {
+                        out.push(zero(u, v, side(u), side(v)));
+                    }
+                }
+            }
+        }
+        out.retain(|&p| in_triangle(p, a) && in_triangle(p, b));
+        out
+    }
+
+    /// The answer of [`pair`] by listing points.
+    fn by_points(points: &[Int], s: [u32; 3], t: [u32; 3]) -> Pair {
+        let at = |i: u32| points[i as usize];
+        let shared: Vec<Int> = s.iter().filter(|i| t.contains(i)).map(|&i| at(i)).collect();
+        let allowed = |p: &Ratio| match shared[..] {
+            [] => false,
+            [a] => from(*p, a) == [0; 3],
+            [a, b, ..] => {
+                let (d, e) = (from(*p, a), sub(b, a));
+                cross(d, e) == [0; 3] && dot(d, e) >= 0 && dot(from(*p, b), e) <= 0
+            }
+        };
+        match shared.len() {
+            3 => Pair::Same,
+            _ if extreme_points(s.map(at), t.map(at)).iter().all(allowed) => Pair::Apart,
+            _ => Pair::Crossing,
+        }
+    }
+
+    #[test]
+    fn random_pairs_on_a_small_lattice_agree_with_rational_arithmetic() {
+        let mut state = 7_u64;
+        let mut below = |n: u64| {
+            state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+            (state >> 33) % n
+        };
+        let mut seen = std::collections::BTreeMap::new();
+        for _ in 0..150_000 {
+            // Few lattice points, so that touching, coplanar and shared cases are common.
+            let side = 2 + below(3);
+            let points: Vec<Int> = (0..6).map(|_| [0; 3].map(|_: i32| i128::from(below(side)))).collect();
+            let floats: Vec<Vec3> = points
+                .iter()
+                .map(|p| Vec3::from_iterator(p.iter().map(|&x| f64::from(i32::try_from(x).unwrap()))))
+                .collect();
+            let number = |base: u32, n: u64| base + u32::try_from(n).unwrap();
+            let s = [0, 1, 2];
+            let t = [number(0, below(6)), number(0, below(6)), number(3, below(3))];
+            let flat = |t: [u32; 3]| normal(t.map(|i| points[i as usize])) == [0; 3];
+            assert_eq!(flat(s), collinear(&floats[0], &floats[1], &floats[2]));
+            if flat(s) || flat(t) || t[0] == t[1] || t[1] == t[2] || t[2] == t[0] {
+                continue;
+            }
+            // A shared place must be a shared number, as in a welded mesh.
+            let twin = |&i: &u32| s.iter().any(|&j| i != j && points[i as usize] == points[j as usize]);
+            if t.iter().any(twin) {
+                continue;
+            }
+            let want = by_points(&points, s, t);
+            assert_eq!(pair(&floats, s, t), want, "{points:?} {t:?}");
+            assert_eq!(pair(&floats, t, s), want, "{points:?} {t:?} swapped");
+            *seen.entry((t.iter().filter(|i| s.contains(i)).count(), want == Pair::Crossing)).or_insert(0) +=
+                1;
+        }
+        // All of: nothing, a corner, an edge shared; apart and crossing.
+        assert!(
+            (0..3).all(|k| [true, false].iter().all(|c| seen.get(&(k, *c)).is_some_and(|&n| n > 200))),
+            "{seen:?}"
+        );
+    }
+}

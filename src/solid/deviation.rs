@@ -287,13 +287,17 @@ impl Comparison<'_> {
         t.into_iter().fold(t[0], |best, i| if d(i) < d(best) { i } else { best })
     }
 
-    /// Corners excepted, points of the triangle no farther apart than the spacing (or [`STEPS`] along an edge):
+    /// Corners excepted, points of the triangle no farther apart than the spacing (or [`STEPS`] along an edge)
+    /// and the middle of each edge longer than half the spacing:
     /// the middle, rows inside, and those edges that run from a smaller to a larger number, so that each edge
     /// of a closed mesh is sampled once.
     fn samples(&self, t: &[u32; 3], out: &mut Vec<Vec3>) {
         out.clear();
         let p = t.map(|i| self.input.positions[i as usize]);
-        let steps = |length: f64| (length / self.spacing).ceil().clamp(2.0, STEPS);
+        let steps = |length: f64| match length / self.spacing {
+            short if short < 0.5 => 1.0,
+            parts => parts.ceil().clamp(2.0, STEPS),
+        };
         let mut longest = 0;
         for k in 0..3 {
             let (a, b) = (&p[k], &p[(k + 1) % 3]);
@@ -338,11 +342,14 @@ fn between(a: &Vec3, b: &Vec3, steps: f64, out: &mut Vec<Vec3>) {
     }
 }
 
-/// Calls `visit` with the cells of a grid that a box meets until it returns true; says whether it did.
+/// Calls `visit` with the cells of a grid that a box meets (cells below 0 begin after, not at, their edge) until it returns true; says whether it did.
 #[expect(clippy::cast_possible_truncation, reason = "saturates for cells beyond any build volume")]
 fn each_cell(b: &Aabb, cell: f64, mut visit: impl FnMut([i64; 3]) -> bool) -> bool {
-    let lo = b.min.map(|x| (x / cell).floor() as i64);
-    let hi = b.max.map(|x| (x / cell).floor() as i64);
+    let floor = |x: f64| {
+        let y = x / cell;
+        y as i64 - i64::from(y < 0.0)
+    };
+    let (lo, hi) = (b.min.map(floor), b.max.map(floor));
     for x in lo.x..=hi.x {
         for y in lo.y..=hi.y {
             for z in lo.z..=hi.z {

@@ -18,8 +18,6 @@ pub(super) struct Seamed {
     origin: Vec<u32>,
     /// The side.
     sides: Vec<Side>,
-    /// Unit normals of the cut mesh, zero where undefined.
-    normals: Vec<Vec3>,
 }
 
 impl Seamed {
@@ -40,22 +38,11 @@ impl Seamed {
                 indices.push(*number);
             }
         }
-        let at = |l: u32| mesh.positions[origin[l as usize] as usize];
-        let mut normals = vec![Vec3::zeros(); origin.len()];
-        for t in indices.chunks_exact(3) {
-            let normal = (at(t[1]) - at(t[0])).cross(&(at(t[2]) - at(t[0])));
-            for &l in t {
-                normals[l as usize] += normal;
-            }
-        }
-        for v in &mut normals {
-            *v = v.try_normalize(0.0).unwrap_or_default();
-        }
         // Only a part far from the origin is moved, by whole millimetres: near it the f32 values stay as they are.
         let (centre, extent) = (mesh.bounds().centre(), mesh.bounds().extent());
         let shift = if centre.norm() > 2.0 * extent.norm() { centre.map(f64::round) } else { Vec3::zeros() };
         let places = origin.iter().map(|&v| single(&(mesh.positions[v as usize] - shift))).collect();
-        Self { indices, places, origin, sides, normals }
+        Self { indices, places, origin, sides }
     }
 
     /// The vertex of the uncut mesh that a vertex of the cut mesh came from.
@@ -73,13 +60,9 @@ impl Seamed {
         self.sides[l as usize]
     }
 
-    /// The unit normal of the uncut mesh's side at a vertex of the cut mesh.
-    pub(super) fn normal(&self, l: u32) -> &Vec3 {
-        &self.normals[l as usize]
-    }
-
     /// Calls the simplifier: at least `target` triangles, and at most an *estimated* error of `goal_mm`. Vertices whose
-    /// entry in `locked` (one each) is set stay. Returns triangles of the cut mesh.
+    /// entry in `locked` (one each) is set stay. With `even`, a tenth of the way a vertex
+    /// moves counts as error as well. Returns triangles of the cut mesh.
     ///
     /// # Errors
     /// [`SimplifyError::Internal`] when what is handed over or comes back is not in order: the C++ library
@@ -89,6 +72,7 @@ impl Seamed {
         locked: &[bool],
         target: usize,
         goal_mm: f64,
+        even: bool,
     ) -> Result<Vec<[u32; 3]>, SimplifyError> {
         let n = self.places.len();
         let in_range = |list: &[u32]| list.len().is_multiple_of(3) && list.iter().all(|&i| (i as usize) < n);
@@ -102,15 +86,10 @@ impl Seamed {
         }
         let adapter = VertexDataAdapter::new(typed_to_bytes(&self.places), size_of::<[f32; 3]>(), 0)
             .map_err(|_| SimplifyError::Internal("the simplifier did not take the vertices"))?;
-        let list = simplify_with_locks(
-            &self.indices,
-            &adapter,
-            locked,
-            3 * target,
-            narrow(goal_mm),
-            SimplifyOptions::ErrorAbsolute,
-            None,
-        );
+        let shape = if even { SimplifyOptions::RegularizeLight } else { SimplifyOptions::None };
+        let options = SimplifyOptions::ErrorAbsolute | shape;
+        let list =
+            simplify_with_locks(&self.indices, &adapter, locked, 3 * target, narrow(goal_mm), options, None);
         if !in_range(&list) {
             return Err(SimplifyError::Internal("the simplifier returned vertices that do not exist"));
         }
@@ -156,8 +135,8 @@ mod tests {
     fn nothing_moves_at_a_goal_of_zero_with_all_locked() {
         let m = shapes::icosphere(5.0, 2);
         let s = Seamed::cut(&m);
-        let t = s.simplified(&vec![true; s.origins().len()], 0, 1.0).unwrap();
+        let t = s.simplified(&vec![true; s.origins().len()], 0, 1.0, false).unwrap();
         assert_eq!(t.len(), m.triangles.len());
-        assert!(s.simplified(&[true], 0, 1.0).is_err());
+        assert!(s.simplified(&[true], 0, 1.0, false).is_err());
     }
 }
