@@ -94,6 +94,11 @@ pub struct WallFigures {
 /// A place thinner than `limit_mm` is an edge, not a wall, when a ball of diameter `limit_mm` fits into the material so near
 /// that the two are at most `limit_mm` (and the spacing of the samples) apart.
 ///
+/// # Limits
+/// A dent or pit in a thick wall that is narrower than about `limit_mm` all round is told as an edge, too: it has the same
+/// material beside it. Read `edge` with `ball`. Where there are teeth, `ball` is often just above `limit_mm`: a
+/// tooth that thick counts as a wall.
+///
 /// - `mesh`: closed, outward, free of crossings; otherwise the figures mean nothing (but there are some).
 /// - `limit_mm`: the thickness the walls should have, above 0.
 /// - returns: thicknesses at most 0.1 % too great; no place for an empty or spoiled mesh.

@@ -5,7 +5,8 @@ usage: python check_measures.py DIR
 DIR holds set.json and the STL files it names. Compared with the findings of each stage:
 - overhang-area (outer surface and chambers together): from the facets, to 1e-3;
 - support-volume: mean length of 4000 vertical rays times the shadow of the overhang, to 5 %;
-- wall-ray: a ray at the place of the finding, to 5 %; and of 4000 rays elsewhere none is more than 5 % shorter.
+- wall-ray: a ray at the place of the finding, to 5 %; and of 4000 rays elsewhere none is more than 5 % shorter,
+  but for edges: places beside which a ball as thick as the wall should be fits into the material.
 The angle limit is that of the profile in profiles/. Rays are cast by manifold3d.
 
 Prints one line a stage, then `N passed, N failed`; the exit status is 1 when anything failed.
@@ -29,6 +30,7 @@ TIE_DEG = 0.01  # facets at the limit to this angle need no support
 RESTING_MM = 1e-3
 WEDGE_MM = 0.01  # thinner: the edge of a sharp wedge, where thickness goes to nothing and no ray repeats it
 FACING = -0.5  # cosine between normals of two sides of a wall
+HOLDS = 0.9  # share of its radius that such a ball must have free
 PROFILES = pathlib.Path(__file__).parents[2] / "profiles"
 
 
@@ -94,7 +96,33 @@ def check_overhang(solid, stage, limit_deg, faults):
     return area, volume
 
 
-def check_wall(solid, stage, faults):
+class Edges:
+    """Tells teeth and knife edges from walls by the balls that fit beside them."""
+
+    def __init__(self, solid, limit_mm):
+        self.middles = solid.corners.mean(axis=1)
+        self.balls = self.middles - solid.normals * (limit_mm / 2.0)
+        self.near_ball = scipy.spatial.cKDTree(self.balls)
+        self.near_surface = scipy.spatial.cKDTree(np.concatenate([self.middles, solid.corners.reshape(-1, 3)]))
+        self.free = HOLDS * limit_mm / 2.0
+        spacing = np.sqrt(solid.areas.sum() / np.clip(len(solid.areas), 20_000, 200_000))
+        self.reach = 1.5 * limit_mm + 0.7 * spacing
+
+    def has(self, middle):
+        """Whether a thin place with this middle stands on thicker material."""
+        for t in self.near_ball.query_ball_point(middle, 1.1 * self.reach):
+            if self.near_surface.query(self.balls[t])[0] >= self.free:
+                return True
+        return False
+
+
+def full_wall(stage, profile):
+    """The thickness walls should have: the profile's, or what was asked for if that is more."""
+    asked = [f["limit"] for f in stage["findings"] if f["check"] == "wall-asked"]
+    return max([profile["wall_unsupported_mm"]["value"], *asked])
+
+
+def check_wall(solid, stage, profile, faults):
     finding = next((f for f in stage["findings"] if f["check"] == "wall-ray" and f["place_mm"]), None)
     if finding is None:
         return None
@@ -110,13 +138,16 @@ def check_wall(solid, stage, faults):
     if lengths and thickness > WEDGE_MM:
         best = min(lengths, key=lambda length: abs(length - thickness))
         faults.near(best, thickness, 0.05 * thickness, "wall by a ray at its place in mm")
+    edges = Edges(solid, full_wall(stage, profile))
     shortest = np.inf
     chosen, points = solid.points(np.where(solid.thin, 0.0, solid.areas))
     for t, point in zip(chosen, points):
         n = solid.normals[t]
         hits = solid.body.ray_cast(tuple(point - OFF_MM * n), tuple(point - REACH_MM * n))
         if hits and np.dot(hits[0].normal, n) <= FACING:
-            shortest = min(shortest, hits[0].distance * (REACH_MM - OFF_MM))
+            length = hits[0].distance * (REACH_MM - OFF_MM)
+            if length >= 0.95 * thickness or not edges.has(point - n * (length / 2.0)):
+                shortest = min(shortest, length)
     faults.need(shortest >= 0.95 * thickness, f"a wall of {shortest:.4f} mm was found, set.json says {thickness:.4f}")
     return shortest
 
@@ -138,7 +169,7 @@ def main():
         if limit:
             area, volume = check_overhang(solid, stage, limit["value"], faults)
             said.append(f"overhang {area:.1f} mm2, support {volume:.0f} mm3")
-        shortest = check_wall(solid, stage, faults)
+        shortest = check_wall(solid, stage, profile, faults)
         if shortest is not None:
             said.append(f"shortest of {RAYS} wall rays {shortest:.3f} mm")
         if faults.found:
