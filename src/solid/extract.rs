@@ -29,7 +29,7 @@ use rayon::prelude::*;
 use rustc_hash::FxHashSet;
 
 /// Roots stay this share of an edge away from its ends, so that rounding cannot reach a node.
-const EDGE_MARGIN: f64 = 1e-3;
+const EDGE_MARGIN: f64 = 2e-4;
 /// A root is good when the field there is below this, mm.
 const ROOT_MM: f64 = 2e-4;
 /// Steps of the bracketed root search; bisection alone would then reach cell / 2^40.

@@ -73,7 +73,7 @@ pub enum GridError {
 /// vertices, oriented outward and embedded, and stays so when positions are read as f32, because every
 /// vertex on a lattice edge stays exactly on it when rounded (see the module docs of `cube`, `extract`).
 /// For a 1-Lipschitz field: no part of the zero set that the nodes can see is missed. Vertices on lattice
-/// edges lie within 0.2 um of the zero set (plus the field's own accuracy, plus a thousandth of a cell
+/// edges lie within 0.2 um of the zero set (plus the field's own accuracy, plus a five-thousandth of a cell
 /// where the zero set passes a node), except beside air filled by `fill`.
 ///
 /// # Limits
