@@ -4,17 +4,17 @@
 //! to ask for anything from outside. All text from the job is escaped by the template.
 
 mod embed;
+mod sources;
 mod stage;
 mod timeline;
 
 use super::cautions::{Section, general};
 use super::record::{SetRecord, StageRecord};
-use super::words::{
-    figure, grouped, marks_shown, one_line, printed, set_sentence, stage_name, verdict_sentence,
-};
+use super::words::{grouped, marks_shown, one_line, printed, set_sentence, stage_name, verdict_sentence};
 use crate::check::Verdict;
 use crate::units::Unit;
 use maud::{DOCTYPE, Markup, PreEscaped, html};
+use sources::Sources;
 use stage::NamedPicture;
 
 /// Pictures of the stages: the stage's index, then name of the view (see `picture::VIEWS`) and PNG bytes.
@@ -40,6 +40,7 @@ pub fn sheet_html(set: &SetRecord, pictures: &SheetPictures) -> String {
     };
     let stages: Vec<(&StageRecord, Vec<NamedPicture>)> =
         set.stages.iter().map(|s| (s, of_stage(s))).collect();
+    let sources = Sources::of(set);
     let page = html! {
         (DOCTYPE)
         html lang="en" {
@@ -57,8 +58,8 @@ pub fn sheet_html(set: &SetRecord, pictures: &SheetPictures) -> String {
                 main {
                     (overview(set, &stages))
                     (failures(set))
-                    @for (record, pictures) in &stages { (stage::stage(set, record, pictures)) }
-                    (cautions(set))
+                    @for (record, pictures) in &stages { (stage::stage(set, record, pictures, &sources)) }
+                    (cautions(set, &sources))
                     (recipe(set))
                 }
                 footer {
@@ -165,7 +166,7 @@ fn failures(set: &SetRecord) -> Markup {
     }
 }
 
-fn cautions(set: &SetRecord) -> Markup {
+fn cautions(set: &SetRecord, sources: &Sources) -> Markup {
     html! {
         section .card .chapter aria-labelledby="cautions" {
             h2 #cautions { "Cautions" }
@@ -173,6 +174,7 @@ fn cautions(set: &SetRecord) -> Markup {
                 h3 { (heading) }
                 ul .lines { @for line in &lines { li { (led(line)) } } }
             }
+            (sources.section())
         }
     }
 }
@@ -188,20 +190,23 @@ fn led(line: &str) -> Markup {
 fn recipe(set: &SetRecord) -> Markup {
     let profile = &set.profile;
     html! {
-        section .card aria-labelledby="recipe" {
+        section .card .whole aria-labelledby="recipe" {
             h2 #recipe { "Recipe" }
             p {
                 "This job file, with stagewright " (env!("CARGO_PKG_VERSION")) " and the profile "
                 code { (one_line(&profile.name)) } ", makes the same files again, byte for byte."
             }
             pre { (marks_shown(&set.job.to_toml())) }
-            dl .figures {
-                div { dt { "Process" } dd { (one_line(&profile.process)) " (" (one_line(&profile.process_code)) ")" } }
-                div { dt { "Material" } dd { (one_line(&profile.material)) } }
-                div { dt { "Density" } dd { (figure(profile.density_g_cm3.value, Unit::Ratio).trim_end_matches('0')) " g/cm³" } }
+            p {
+                "Process: " (one_line(&profile.process)) " (" (one_line(&profile.process_code)) "). Material: "
+                (one_line(&profile.material)) ", " (density(profile.density_g_cm3.value)) " ("
+                (one_line(&profile.density_g_cm3.source)) ")."
             }
-            p .soft { "Density: " (one_line(&profile.density_g_cm3.source)) "." }
             p .soft { "Formulas: " (one_line(&set.family_source)) }
         }
     }
+}
+
+fn density(g_cm3: f64) -> String {
+    if g_cm3.is_finite() { format!("{g_cm3} g/cm³") } else { "density not known".into() }
 }

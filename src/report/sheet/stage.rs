@@ -2,6 +2,7 @@
 
 use super::badge;
 use super::embed::{PngFacts, data_uri, png_facts};
+use super::sources::Sources;
 use crate::check::{Finding, Verdict};
 use crate::report::picture::VIEWS;
 use crate::report::record::{SetRecord, StageRecord};
@@ -45,7 +46,12 @@ impl NamedPicture {
     }
 }
 
-pub(super) fn stage(set: &SetRecord, record: &StageRecord, pictures: &[NamedPicture]) -> Markup {
+pub(super) fn stage(
+    set: &SetRecord,
+    record: &StageRecord,
+    pictures: &[NamedPicture],
+    sources: &Sources,
+) -> Markup {
     let id = format!("stage-{}", record.index);
     let large = |p: &&NamedPicture| matches!(p.name.as_str(), "portrait" | "opened");
     let width = pictures.iter().find_map(|p| p.facts.width_mm);
@@ -59,7 +65,7 @@ pub(super) fn stage(set: &SetRecord, record: &StageRecord, pictures: &[NamedPict
                 p .soft { "Parallel views; each picture is " (format!("{width:.0}")) " mm wide." }
             }
             (figures(set, record))
-            (findings(record))
+            (findings(record, sources))
             (files(record))
         }
     }
@@ -99,7 +105,7 @@ fn figures(set: &SetRecord, record: &StageRecord) -> Markup {
     }
 }
 
-fn findings(record: &StageRecord) -> Markup {
+fn findings(record: &StageRecord, sources: &Sources) -> Markup {
     let passes: Vec<&Finding> = findings_of(record, Verdict::Pass).collect();
     html! {
         h3 { "Findings" }
@@ -110,11 +116,11 @@ fn findings(record: &StageRecord) -> Markup {
         @if !passes.is_empty() {
             details .screen {
                 summary { (passes.len()) " figures within their limits or for information" }
-                (table(&passes))
+                (table(&passes, sources))
             }
             div .paper {
                 p { b { "Within their limits or for information" } }
-                (table(&passes))
+                (table(&passes, sources))
             }
         }
     }
@@ -150,7 +156,7 @@ fn numbers(finding: &Finding) -> Markup {
     }
 }
 
-fn table(findings: &[&Finding]) -> Markup {
+fn table(findings: &[&Finding], sources: &Sources) -> Markup {
     html! {
         div .scroll {
             table .stack {
@@ -167,7 +173,7 @@ fn table(findings: &[&Finding]) -> Markup {
                                 (one_line(&f.message))
                                 @if let Some(p) = &f.place_mm { " Place: " (place(p)) "." }
                             }
-                            td data-label="Source" { (one_line(&f.source)) }
+                            td data-label="Source" { (sources.reference(&f.source)) }
                         }
                     }
                 }
