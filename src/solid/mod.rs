@@ -7,6 +7,7 @@ mod extract;
 mod fill;
 mod finish;
 mod lattice;
+mod level;
 mod probe;
 mod seams;
 mod shells;
