@@ -58,11 +58,12 @@ const VERTICES: f64 = 1.5;
 const BYTES_A_VERTEX: f64 = 520.0;
 /// Bytes a triangle costs while simplified.
 const BYTES_A_TRIANGLE: f64 = 600.0;
-/// Triangles left after simplification, times the square of the tolerance over the area: fitted to the starter
-/// set and to the order-2 and order-3 stages at 120 mm, within a factor 1.5.
-const TRIANGLES_LEFT: f64 = 0.02;
-/// Seconds of one core a vertex of the unsimplified mesh costs, all steps together.
-const SECONDS_A_VERTEX: f64 = 25e-6;
+/// Triangles left after simplification, times the tolerance over (boundary area times root mean square
+/// curvature of the skin): 1.06 and 1.32 at tau 0 and 0.5 of the starter set.
+const TRIANGLES_LEFT: f64 = 1.2;
+/// Seconds of one core a vertex of the unsimplified mesh costs, all steps together (starter set: 154 s for
+/// 1.6 million).
+const SECONDS_A_VERTEX: f64 = 95e-6;
 
 /// Estimates every stage of `job` without making it: from the area and the curvature of the exact skin.
 ///
@@ -86,7 +87,8 @@ pub fn plan(job: &Job, profile: &Profile) -> Result<Plan, PlanError> {
             let vertices = VERTICES * boundary / (grid * grid);
             let bytes = vertices * (BYTES_A_VERTEX + 2.0 * BYTES_A_TRIANGLE) + 8.0 * all_blocks;
             let mass_g = area * job.wall_mm * profile.density_g_cm3.value / 1000.0;
-            let left = TRIANGLES_LEFT * boundary / (job.tolerance_mm * figures.min_radius * scale);
+            let bend = (figures.bending_energy / area).sqrt();
+            let left = TRIANGLES_LEFT * boundary * bend / job.tolerance_mm;
             StagePlan {
                 index,
                 tau: laid.stage.tau(),

@@ -3,7 +3,7 @@
 use stagewright::geom::Vec3;
 use stagewright::mesh::{Side, TriMesh, shapes};
 use stagewright::report::picture::{
-    Frame, LONGEST_PX, Look, PictureError, Section, View, overview, render, stage_pictures,
+    Frame, LONGEST_PX, Look, PictureError, Section, View, render, stage_pictures,
 };
 
 /// The pixels of a PNG, by the reader of the PNG library.
@@ -169,26 +169,4 @@ fn a_stage_has_its_six_views_at_one_scale() {
     }
     let opened = pixels(&pictures.all[1].png).2;
     assert!(share(&opened, is_sand) > 0.1, "the inside is seen");
-}
-
-#[test]
-fn the_overview_has_two_rows_and_a_column_a_stage() {
-    let (small, large) = (shapes::on_side(&shapes::icosphere(10.0, 3), Side::A), shell());
-    let image = overview(&[&small, &large], 100, &Look::default()).unwrap();
-    assert_eq!((image.width(), image.height()), (200, 200));
-    let part = |columns: std::ops::Range<usize>, rows: std::ops::Range<usize>| {
-        let cells: Vec<[u8; 3]> = rows
-            .flat_map(|r| columns.clone().map(move |c| (r, c)))
-            .map(|(r, c)| image.pixels()[r * 200 + c])
-            .collect();
-        cells
-    };
-    let (left, right) = (share(&part(0..100, 0..100), is_teal), share(&part(100..200, 0..100), is_teal));
-    assert!(
-        right > 12.0 * left && left > 0.01,
-        "one scale for all: areas as 16 to 1, got {right} and {left}"
-    );
-    assert!(share(&part(100..200, 100..200), is_sand) > 0.1);
-    assert!(matches!(overview(&[&large; 100], 100, &Look::default()), Err(PictureError::Size(..))));
-    assert_eq!(overview(&[], 40, &Look::default()).unwrap().width(), 40);
 }

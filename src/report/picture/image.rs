@@ -18,11 +18,6 @@ pub struct Image {
 }
 
 impl Image {
-    /// Empty paper at a scale of so many mm a pixel.
-    pub(super) fn blank(width: u32, height: u32, paper: [u8; 3], scale_mm: f64) -> Self {
-        Self { width, height, paper, pixels: vec![paper; width as usize * height as usize], scale_mm }
-    }
-
     /// Averages the samples of each pixel, in linear light.
     pub(super) fn averaged(samples: &[Sample], camera: &Camera, paper: [u8; 3]) -> Self {
         let n = camera.per_pixel;
@@ -66,16 +61,6 @@ impl Image {
     #[must_use]
     pub fn pixels(&self) -> &[[u8; 3]] {
         &self.pixels
-    }
-
-    /// Copies `other` into this picture with its top left corner at the given place; what sticks out is lost.
-    pub(super) fn paste(&mut self, other: &Self, left: u32, top: u32) {
-        for row in 0..other.height.min(self.height.saturating_sub(top)) {
-            let columns = other.width.min(self.width.saturating_sub(left)) as usize;
-            let from = row as usize * other.width as usize;
-            let to = (top + row) as usize * self.width as usize + left as usize;
-            self.pixels[to..to + columns].copy_from_slice(&other.pixels[from..from + columns]);
-        }
     }
 
     /// Writes the picture as PNG with at most 256 colours. Its resolution entry (pHYs) is the scale of the
@@ -230,7 +215,8 @@ mod tests {
 
     #[test]
     fn few_colours_are_kept_exactly_and_many_nearly() {
-        let mut image = Image::blank(64, 64, [255; 3], 1.0);
+        let mut image =
+            Image { width: 64, height: 64, paper: [255; 3], pixels: vec![[255; 3]; 64 * 64], scale_mm: 1.0 };
         for (k, pixel) in (0_u8..200).zip(image.pixels.iter_mut()) {
             *pixel = [k, 255 - k, 17];
         }

@@ -8,7 +8,6 @@
 mod camera;
 mod image;
 mod normals;
-mod overview;
 mod raster;
 mod shade;
 mod sky;
@@ -16,7 +15,6 @@ mod stage;
 
 pub use camera::{Frame, Section, View};
 pub use image::Image;
-pub use overview::overview;
 pub use shade::Look;
 pub use stage::{Picture, StagePictures, VIEWS, stage_pictures};
 
