@@ -20,7 +20,7 @@ pub enum FolderError {
         path: PathBuf,
     },
     /// The folder can neither be found nor made.
-    #[error("output folder {path}: it cannot be made ({source}); choose another --out")]
+    #[error("output folder {path}: it cannot be made; choose another --out")]
     NotMade {
         /// The folder asked for.
         path: PathBuf,
@@ -28,7 +28,7 @@ pub enum FolderError {
         source: io::Error,
     },
     /// No file can be written into it.
-    #[error("output folder {path}: no file can be written there ({source}); choose another --out")]
+    #[error("output folder {path}: no file can be written there; choose another --out")]
     NotWritable {
         /// The folder asked for.
         path: PathBuf,

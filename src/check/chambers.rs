@@ -86,7 +86,7 @@ pub(super) fn findings(body: &Body<'_>, profile: &Profile) -> Vec<Finding> {
         } else {
             let seals = if n == 1 { "is" } else { "are" };
             format!(
-                "{n} chamber{} of {} {seals} sealed; {meaning}.",
+                "{n} chamber{}, {} together, {seals} sealed; {meaning}.",
                 plural(n),
                 Quantity::new(total, Unit::Mm3)
             )
@@ -198,7 +198,7 @@ mod tests {
         ] {
             let f = first(name);
             assert_eq!(f.verdict, Verdict::Fail, "{name}");
-            assert!(f.message.starts_with("1 chamber of ") && f.message.contains(what), "{}", f.message);
+            assert!(f.message.starts_with("1 chamber, ") && f.message.contains(what), "{}", f.message);
         }
         let f = first("pbf-pa12");
         assert!(f.advice.contains("2 opening(s) of 5.00 mm each") && f.source.contains("PL 3DP"), "{f:?}");

@@ -30,7 +30,7 @@ pub(super) fn run(args: &PlanArgs, terminal: &Terminal) -> anyhow::Result<Status
     let mass_g: f64 = plan.stages.iter().map(|s| s.mass_g).sum();
     let seconds: f64 = plan.stages.iter().map(|s| s.seconds).sum();
     text += &format!(
-        "estimates; together {} and {} on one core; grid {} mm\n",
+        "estimates; together {} and {} on one core; grid {:.3} mm\n",
         Quantity::new(mass_g, Unit::Gram),
         duration(seconds),
         plan.grid_mm

@@ -148,7 +148,8 @@ def check_wall(solid, stage, profile, faults):
             length = hits[0].distance * (REACH_MM - OFF_MM)
             if length >= 0.95 * thickness or not edges.has(point - n * (length / 2.0)):
                 shortest = min(shortest, length)
-    faults.need(shortest >= 0.95 * thickness, f"a wall of {shortest:.4f} mm was found, set.json says {thickness:.4f}")
+    found = shortest >= 0.95 * thickness or thickness <= WEDGE_MM
+    faults.need(found, f"a wall of {shortest:.4f} mm was found, set.json says {thickness:.4f}")
     return shortest
 
 

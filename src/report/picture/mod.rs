@@ -1,8 +1,8 @@
 //! Pictures of solids, drawn on the CPU: what a maker sees first.
 //!
-//! One picture is made in four steps, each in its own file: [`raster`] finds the triangle seen in each
-//! sample, [`sky`] how much light reaches it past the rest of the solid, [`shade`] its colour and the
-//! lines, [`image`](self::image) the average of the samples and the PNG. Every sample is computed on its
+//! One picture is made in four steps, each in its own file: `raster` finds the triangle seen in each
+//! sample, `sky` how much light reaches it past the rest of the solid, `shade` its colour and the
+//! lines, `image` the average of the samples and the PNG. Every sample is computed on its
 //! own, so the bytes don't depend on the number of threads.
 
 mod camera;
