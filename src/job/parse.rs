@@ -206,7 +206,7 @@ impl Reader<'_> {
     }
 
     fn wrong_type(&mut self, key: &str, value: &Value<'_>, allowed: &str) {
-        let found = format!("{} ({})", type_words(value.get_ref()), self.quote(&value.span()));
+        let found = format!("{} ({})", crate::profile::kind(value.get_ref()), self.quote(&value.span()));
         let cause = Cause::WrongType { key: key.to_owned(), found, allowed: allowed.to_owned() };
         self.report(value.span(), cause, None);
     }
@@ -477,18 +477,6 @@ pub fn is_profile_path(profile: &str) -> bool {
 
 fn find<'d, 'i>(root: &'d DeTable<'i>, key: &Key) -> Option<&'d Value<'i>> {
     root.get(key.table)?.get_ref().as_table()?.get(key.name)
-}
-
-fn type_words(value: &DeValue<'_>) -> &'static str {
-    match value {
-        DeValue::String(_) => "text",
-        DeValue::Integer(_) => "a whole number",
-        DeValue::Float(_) => "a number",
-        DeValue::Boolean(_) => "true or false",
-        DeValue::Datetime(_) => "a date",
-        DeValue::Array(_) => "a list",
-        DeValue::Table(_) => "a table",
-    }
 }
 
 fn shorten(typed: &str) -> String {

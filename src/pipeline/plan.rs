@@ -83,7 +83,7 @@ pub fn plan(job: &Job, profile: &Profile) -> Result<Plan, PlanError> {
             finest = finest.min(grid);
             let area = figures.area * scale * scale;
             let boundary = 2.0 * area;
-            let (all_blocks, _) = solid::block_estimate(&laid.extent_mm, boundary, grid);
+            let all_blocks = solid::block_estimate(&laid.extent_mm, grid);
             let vertices = VERTICES * boundary / (grid * grid);
             let bytes = vertices * (BYTES_A_VERTEX + 2.0 * BYTES_A_TRIANGLE) + 8.0 * all_blocks;
             let mass_g = area * job.wall_mm * profile.density_g_cm3.value / 1000.0;

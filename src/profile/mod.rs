@@ -10,6 +10,7 @@ mod parse;
 
 pub use built_in::built_in_names;
 pub use describe::describe;
+pub(crate) use parse::kind;
 pub use parse::{Problem, ProfileErrors};
 
 use serde::{Deserialize, Serialize};

@@ -438,8 +438,8 @@ fn nearest<'k>(word: &str, known: &[&'k str]) -> Option<&'k str> {
     best.map(|(k, _)| k)
 }
 
-/// What a value is, in words.
-fn kind(value: &DeValue<'_>) -> &'static str {
+/// What a value of a TOML file is, in words.
+pub(crate) fn kind(value: &DeValue<'_>) -> &'static str {
     match value {
         DeValue::String(_) => "text",
         DeValue::Integer(_) => "a whole number",

@@ -144,9 +144,9 @@ fn without_crumbs(mesh: TriMesh, crumb_mm3: f64) -> (TriMesh, usize, usize, f64)
     (out, voids, small.len() - voids, volume)
 }
 
-/// Blocks of the sign table and sampled blocks an area of boundary needs, for estimates of memory.
+/// Blocks of the sign table for a part of this extent, for estimates of memory; 8 bytes each.
 #[must_use]
-pub fn block_estimate(extent_mm: &Vec3, boundary_mm2: f64, cell_mm: f64) -> (f64, f64) {
+pub fn block_estimate(extent_mm: &Vec3, cell_mm: f64) -> f64 {
     let b = cell_mm * f64::from(BLOCK);
-    ((0..3).map(|k| extent_mm[k] / b + 2.0).product(), 2.2 * boundary_mm2 / (b * b))
+    (0..3).map(|k| extent_mm[k] / b + 2.0).product()
 }
